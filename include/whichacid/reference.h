@@ -1,0 +1,185 @@
+/* The editable reference table: acid systems, their constants by source, the forms that are
+ * weighed, indicators, buffers, titrants, standards and atomic weights; and its checks.
+ * Everything is plain CSV in one folder, see reference/ and DEVELOPERS.md. */
+#ifndef WHICHACID_REFERENCE_H
+#define WHICHACID_REFERENCE_H
+
+#include "whichacid/error.h"
+
+#define WA_PROTONS_MAX 12  /**< most dissociation steps of one acid system */
+#define WA_PARTS_MAX 6     /**< most acid systems in one form */
+#define WA_PART_WATER (-1) /**< part.acid of the key `water`: brings hydroxide, no system */
+
+/** One row of constants.csv as written. */
+struct wa_constant_row {
+    int acid; /**< index into table.acids */
+    int step; /**< from 1 */
+    double pKa;
+    double u;
+    double temperature_C;
+    double ionic_strength;
+    bool thermodynamic;
+    double enthalpy;      /**< kJ/mol, NaN when unknown */
+    double heat_capacity; /**< J/(K mol), NaN when unknown */
+    const char *source;   /**< key in sources.csv, or "from memory" */
+    const char *note;
+    const char *file;
+    long line;
+};
+
+/** One step of an acid system after its rows were combined: thermodynamic, 25 degree Celsius. */
+struct wa_step {
+    double pKa;
+    double u;
+    double enthalpy;   /**< kJ/mol; when unknown 0 with enthalpy_u set accordingly */
+    double enthalpy_u; /**< kJ/mol, standard uncertainty */
+    bool enthalpy_known;
+    double heat_capacity; /**< J/(K mol), 0 when unknown */
+    int row_count;        /**< rows combined */
+    bool converted;       /**< some row was a concentration constant converted to I = 0 */
+    bool from_memory;     /**< no row has a source */
+};
+
+/** An acid system. */
+struct wa_acid {
+    const char *key;
+    const char *name;
+    const char *other_names; /**< "; " between names */
+    const char *formula;     /**< of the fully protonated species */
+    int charge;              /**< of the fully protonated species */
+    const char *group;       /**< "" when it stands alone */
+    bool modelled;
+    const char *note;
+    int step_count;
+    struct wa_step steps[WA_PROTONS_MAX];
+    bool from_user; /**< the row came from a file laid over the table */
+    const char *file;
+    long line;
+};
+
+/** One acid system in a form. */
+struct wa_form_part {
+    int acid;  /**< index into table.acids, or WA_PART_WATER */
+    int count; /**< molecules of it in one formula unit */
+    int lost;  /**< protons already missing from these molecules in total */
+};
+
+/** A solid or liquid as weighed. */
+struct wa_form {
+    const char *key;
+    const char *name;
+    const char *other_names;
+    const char *formula;
+    struct wa_form_part parts[WA_PARTS_MAX];
+    int part_count;
+    int spectator_charge; /**< charge number of the spectator ions in one formula unit */
+    double spectator_z2;  /**< sum of z^2 over those ions, for the ionic strength */
+    double molar_mass;    /**< g/mol, from the formula and the atomic weights */
+    double molar_mass_u;
+    double solubility_mol_L;   /**< of the form in water, NaN when unknown */
+    double melting_point_C;    /**< NaN when unknown */
+    const char *melting_point; /**< as written */
+    const char *cas;
+    const char *hazards; /**< GHS hazard statement codes */
+    const char *care;
+    const char *source;
+    bool modelled; /**< every part is modelled */
+    bool from_user;
+    const char *file;
+    long line;
+};
+
+/** A titrant: what an analyst may write, and what it is. */
+struct wa_titrant {
+    const char *key;
+    const char *name;
+    const char *other_names;
+    bool is_base;
+    bool is_weak;
+    int acid;    /**< acid system of a weak titrant, else WA_PART_WATER */
+    int lost;    /**< protons missing from it as added */
+    int protons; /**< equivalents a mole brings (2 for sulfuric acid or barium hydroxide) */
+};
+
+struct wa_indicator {
+    const char *key;
+    const char *name;
+    double low_pH, high_pH;
+    const char *colour_acid;
+    const char *colour_base;
+    double pKa; /**< NaN when unknown */
+    const char *source;
+};
+
+struct wa_source {
+    const char *key;
+    const char *reference;
+    const char *kind;
+};
+
+/** One finding of a check or a remark of a load. */
+struct wa_table_problem {
+    const char *file;
+    long line;
+    const char *column; /**< header word, "" when the row as a whole is meant */
+    const char *sentence;
+    bool fatal; /**< the row cannot be used */
+};
+
+/** Everything that was loaded. Strings live in `storage` and die with the table. */
+struct wa_table {
+    struct wa_acid *acids;
+    size_t acid_count;
+    struct wa_constant_row *constants;
+    size_t constant_count;
+    struct wa_form *forms;
+    size_t form_count;
+    struct wa_titrant *titrants;
+    size_t titrant_count;
+    struct wa_indicator *indicators;
+    size_t indicator_count;
+    struct wa_source *sources;
+    size_t source_count;
+    struct wa_table_problem *problems;
+    size_t problem_count;
+    size_t overlaid_count; /**< rows of the user's that replaced or joined the table's */
+    char version[17];      /**< first 16 hexadecimal digits of a hash over the files' bytes */
+    struct wa_table_storage *storage; /**< opaque: strings, indexes, atomic weights */
+};
+
+/**
+ * Load a table folder and lay the user's own files over it.
+ * @param[in]  folder      folder with acids.csv, constants.csv, forms.csv, sources.csv,
+ *                         atomic-weights.csv, titrants.csv, indicators.csv, buffers.csv,
+ * standards.csv
+ * @param[in]  also        files or folders of the user's, may be NULL when also_count is 0. A file
+ *                         is recognised by its header words.
+ * @param[out] table       to be freed with wa_table_free; untouched on failure
+ * @return WA_OK, with table->problems listing rows that were not used; WA_ERROR_INPUT for a table
+ *         that cannot be used at all
+ */
+enum wa_status wa_table_load(const char *folder, const char *const *also, size_t also_count,
+                             struct wa_table *table, struct wa_error *error) WA_MUST_USE;
+
+/** Free a table. NULL is allowed. */
+void wa_table_free(struct wa_table *table);
+
+/** Index of the acid with that key, name or other name (case and accents as written, case
+ * folded), or -1. */
+int wa_table_find_acid(const struct wa_table *table, const char *name);
+
+/** Index of the form with that key, name or other name, or -1. */
+int wa_table_find_form(const struct wa_table *table, const char *name);
+
+/** Index of the titrant an analyst's words mean ("0.1 M NaOH", "Natronlauge", "HCl"), or -1. */
+int wa_table_find_titrant(const struct wa_table *table, const char *words);
+
+/**
+ * Molar mass of a formula with brackets, hydrates (· or *), and a trailing charge.
+ * @param[out] u  standard uncertainty from the atomic weights, may be NULL
+ */
+enum wa_status wa_table_molar_mass(const struct wa_table *table, const char *formula,
+                                   double *molar_mass, double *u,
+                                   struct wa_error *error) WA_MUST_USE;
+
+#endif
