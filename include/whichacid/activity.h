@@ -9,6 +9,10 @@
 /** Ionic strength in mol/L beyond which a report says that the Davies equation is out of range. */
 #define WA_DAVIES_LIMIT 0.5
 
+/** Ionic strength in mol/L beyond which the coefficient is held: the linear term would otherwise
+ * run away, and no equation of this kind means anything there. */
+#define WA_DAVIES_HOLD 2.0
+
 /** Water at one temperature. Plain data. */
 struct wa_medium {
     double temperature_C;
@@ -31,7 +35,7 @@ struct wa_medium wa_medium_at(double temperature_C);
 /**
  * lg of the activity coefficient of a singly charged ion by C. W. Davies (Ion Association, 1962):
  * -A (sqrt(I)/(1 + sqrt(I)) - linear_coefficient I). Multiply by z^2 for charge z.
- * @param[in] ionic_strength      mol/L, negative is taken as 0
+ * @param[in] ionic_strength      mol/L, taken as 0 below 0 and as WA_DAVIES_HOLD above it
  * @param[in] debye_huckel_A      from wa_medium_at
  * @param[in] linear_coefficient  WA_DAVIES_COEFFICIENT unless it is being varied
  */

@@ -40,7 +40,7 @@ struct wa_medium wa_medium_at(double temperature_C)
 double wa_davies_log10_gamma(double ionic_strength, double debye_huckel_A,
                              double linear_coefficient)
 {
-    const double strength = fmax(ionic_strength, 0.0);
+    const double strength = fmin(fmax(ionic_strength, 0.0), WA_DAVIES_HOLD);
     const double root = sqrt(strength);
     return -debye_huckel_A * (root / (1.0 + root) - linear_coefficient * strength);
 }
