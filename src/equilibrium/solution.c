@@ -130,7 +130,7 @@ static void add_component(struct balance *balance, const struct moments *m)
 {
     const double c = m->concentration;
     balance->charge += c * m->z;
-    balance->scale += c * fabs(m->z);
+    balance->scale += c * sqrt(m->z2); /* at least the mean of |z| */
     balance->ionic += 0.5 * c * m->z2;
     balance->charge_x += c * m->var_z;
     balance->charge_L -= c * m->cov_z_z2;
