@@ -10,6 +10,7 @@ static const double ln10 = 2.302585092994046;
 static const int newton_steps = 60;
 static const double step_limit = 4.0; /* largest step in ln a(H+) */
 static const double charge_tolerance = 1e-10;
+static const double charge_acceptable = 1e-6;       /* where rounding allows no better */
 static const double sqrt_hold = 1.4142135623730951; /* square root of WA_DAVIES_HOLD */
 static const double step_tolerance = 1e-7; /* quadratic convergence squares this once more */
 
@@ -130,7 +131,7 @@ static void add_component(struct balance *balance, const struct moments *m)
 {
     const double c = m->concentration;
     balance->charge += c * m->z;
-    balance->scale += c * sqrt(m->z2); /* at least the mean of |z| */
+    balance->scale += c * sqrt(fmax(m->z2, 0.0)); /* at least the mean of |z| */
     balance->ionic += 0.5 * c * m->z2;
     balance->charge_x += c * m->var_z;
     balance->charge_L -= c * m->cov_z_z2;
@@ -360,7 +361,8 @@ enum wa_status wa_mixture_solve(const struct wa_mixture *mixture, double pH_gues
     evaluate(mixture, &state, Kw, &balance);
     state.s = sqrt(balance.ionic);
     if (!solve_newton(mixture, Kw, &state, &balance) &&
-        !solve_bracketed(mixture, Kw, &state, &balance)) {
+        (!solve_bracketed(mixture, Kw, &state, &balance) ||
+         !(fabs(balance.charge) < charge_acceptable * balance.scale))) {
         return wa_fail(error, WA_ERROR_NUMERIC, NULL, 0,
                        "The charge balance of this mixture could not be solved.");
     }
