@@ -23,6 +23,11 @@ struct wa_constant_row {
     double heat_capacity; /**< J/(K mol), NaN when unknown */
     const char *source;   /**< key in sources.csv, or "from memory" */
     const char *note;
+    bool from_user;
+    bool used; /**< it entered the combination of its step */
+    /** The value brought to 25 degree Celsius and zero ionic strength, and its uncertainty. */
+    double pKa_standard;
+    double u_standard;
     const char *file;
     long line;
 };
@@ -31,11 +36,12 @@ struct wa_constant_row {
 struct wa_step {
     double pKa;
     double u;
-    double enthalpy;   /**< kJ/mol; when unknown 0 with enthalpy_u set accordingly */
-    double enthalpy_u; /**< kJ/mol, standard uncertainty */
-    bool enthalpy_known;
+    double enthalpy;      /**< kJ/mol; when unknown, what is usual for the kind of proton */
+    double enthalpy_u;    /**< kJ/mol, standard uncertainty */
+    bool enthalpy_known;  /**< some row gives it */
     double heat_capacity; /**< J/(K mol), 0 when unknown */
     int row_count;        /**< rows combined */
+    double birge_ratio;   /**< how much the rows disagree: 1 or less when their u explain it */
     bool converted;       /**< some row was a concentration constant converted to I = 0 */
     bool from_memory;     /**< no row has a source */
 };
@@ -52,6 +58,8 @@ struct wa_acid {
     const char *note;
     int step_count;
     struct wa_step steps[WA_PROTONS_MAX];
+    size_t constant_first; /**< its rows in table.constants stand together, by step */
+    size_t constant_count;
     bool from_user; /**< the row came from a file laid over the table */
     const char *file;
     long line;
@@ -96,8 +104,11 @@ struct wa_titrant {
     const char *other_names;
     bool is_base;
     bool is_weak;
-    int acid;    /**< acid system of a weak titrant, else WA_PART_WATER */
-    int lost;    /**< protons missing from it as added */
+    /** Acid system of a weak titrant and of a strong acid with more than one proton (the second
+     * proton of sulfuric acid is weak), else WA_PART_WATER. */
+    int acid;
+    int count;   /**< molecules of that system in one formula unit (4 boric acids in borax) */
+    int lost;    /**< protons missing from them as added */
     int protons; /**< equivalents a mole brings (2 for sulfuric acid or barium hydroxide) */
 };
 
@@ -111,6 +122,34 @@ struct wa_indicator {
     const char *source;
 };
 
+/** One row of buffers.csv: a standard solution at one temperature. */
+struct wa_buffer {
+    const char *key;
+    const char *name;
+    const char *composition;
+    double temperature_C;
+    double pH;
+    double u;
+    const char *amount; /**< molality or concentration as written */
+    const char *source;
+};
+
+/** A primary standard for titrants. */
+struct wa_standard {
+    const char *key;
+    const char *name;
+    const char *formula;
+    bool for_base;   /**< it standardizes bases (it is an acid); else it standardizes acids */
+    double purity;   /**< mass fraction, NaN when it is not given */
+    double purity_u; /**< standard uncertainty, NaN when it is not given */
+    const char *drying;
+    int equivalents; /**< protons given or taken by one formula unit */
+    double molar_mass;
+    double molar_mass_u;
+    const char *source;
+    const char *note;
+};
+
 struct wa_source {
     const char *key;
     const char *reference;
@@ -120,7 +159,7 @@ struct wa_source {
 /** One finding of a check or a remark of a load. */
 struct wa_table_problem {
     const char *file;
-    long line;
+    long line;          /**< from 1, 0 when the file as a whole is meant */
     const char *column; /**< header word, "" when the row as a whole is meant */
     const char *sentence;
     bool fatal; /**< the row cannot be used */
@@ -138,6 +177,10 @@ struct wa_table {
     size_t titrant_count;
     struct wa_indicator *indicators;
     size_t indicator_count;
+    struct wa_buffer *buffers;
+    size_t buffer_count;
+    struct wa_standard *standards;
+    size_t standard_count;
     struct wa_source *sources;
     size_t source_count;
     struct wa_table_problem *problems;
@@ -171,6 +214,12 @@ int wa_table_find_acid(const struct wa_table *table, const char *name);
 /** Index of the form with that key, name or other name, or -1. */
 int wa_table_find_form(const struct wa_table *table, const char *name);
 
+/** Index of the indicator with that key or name, or -1. */
+int wa_table_find_indicator(const struct wa_table *table, const char *name);
+
+/** Index of the source with that key, or -1 (also for "from memory"). */
+int wa_table_find_source(const struct wa_table *table, const char *key);
+
 /** Index of the titrant an analyst's words mean ("0.1 M NaOH", "Natronlauge", "HCl"), or -1. */
 int wa_table_find_titrant(const struct wa_table *table, const char *words);
 
@@ -181,5 +230,23 @@ int wa_table_find_titrant(const struct wa_table *table, const char *words);
 enum wa_status wa_table_molar_mass(const struct wa_table *table, const char *formula,
                                    double *molar_mass, double *u,
                                    struct wa_error *error) WA_MUST_USE;
+
+/** The sentence of a GHS hazard statement code ("H302"), or NULL. Owned by the table. */
+const char *wa_table_hazard_sentence(const struct wa_table *table, const char *code);
+
+/**
+ * Thermodynamic pKa of a combined step at a temperature, by its enthalpy and heat capacity.
+ * @param[out] u  standard uncertainty with that of the enthalpy, may be NULL
+ */
+double wa_step_pKa_at(const struct wa_step *step, double temperature_C, double *u);
+
+/**
+ * Thermodynamic pK from a concentration constant pKc = -lg([H][A]/[HA]) by the Davies equation.
+ * @param[in]  charge          of the species that loses the proton
+ * @param[in]  ionic_strength  mol/L at which the constant holds
+ * @param[out] u               standard uncertainty of the conversion alone, may be NULL
+ */
+double wa_constant_to_zero_ionic_strength(double pKc, int charge, double ionic_strength,
+                                          double temperature_C, double *u);
 
 #endif
