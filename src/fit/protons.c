@@ -1,0 +1,185 @@
+#include "fit/generic_internal.h"
+
+#include <math.h>
+#include <stdlib.h>
+
+/* Prior weight of n protons: the shares among the acids that laboratories meet, common practice. */
+static const double prior_by_steps[WA_GENERIC_STEPS_MAX] = {0.50, 0.28, 0.13, 0.05, 0.025, 0.015};
+static const double prior_already_lost = 0.25;
+static const int trial_iterations = 3;
+static const double hopeless = 12.0; /* ln of the evidence ratio at which more protons are vain */
+static const double unseen_u = 0.5;
+
+/* Amounts worth starting from: the last jump ends the protons, or the titration stops before. */
+static int start_amounts(const struct wa_experiment *experiment, const struct wa_curve *curve,
+                         int protons, double *amount)
+{
+    const double equivalents_per_mL =
+        fabs(experiment->titrant_charge) * exp(experiment->ln_titrant.mean) * 1e-3;
+    const double last_mL = experiment->volume_mL[experiment->count - 1];
+    int count = 0;
+    for (size_t i = 0; i < curve->inflection_count; i++) {
+        amount[count++] = equivalents_per_mL * curve->inflections[i].volume_mL / protons;
+    }
+    amount[count++] = equivalents_per_mL * 1.3 * last_mL / protons;
+    if (curve->inflection_count == 0) {
+        amount[count++] = equivalents_per_mL * 0.6 * last_mL / protons;
+    }
+    return count;
+}
+
+/* Fit from each start for a few rounds, then bring the best to convergence. */
+static enum wa_status fit_generic(const struct wa_experiment *experiment,
+                                  const struct wa_curve *curve, struct wa_generic *generic,
+                                  struct wa_error *error)
+{
+    const int protons =
+        experiment->titrant_charge > 0.0 ? generic->step_count - generic->lost : generic->lost;
+    double amount[WA_INFLECTIONS_MAX + 2];
+    double start[WA_PARAMETERS_MAX], best_start[WA_PARAMETERS_MAX];
+    double best = -INFINITY;
+    const struct wa_fit_options trial = {.most_iterations = trial_iterations};
+    const int starts = start_amounts(experiment, curve, protons, amount);
+    for (int s = 0; s < starts; s++) {
+        struct wa_fit fit;
+        if (!wa_generic_start(experiment, &generic->sample, amount[s], start)) {
+            return wa_fail_memory(error);
+        }
+        const enum wa_status status =
+            wa_fit_run(experiment, &generic->sample, &trial, start, &fit, error);
+        if (status != WA_OK) {
+            return status;
+        }
+        if (isfinite(fit.log_evidence) && fit.misfit > 0.0 && fit.log_evidence > best) {
+            best = fit.log_evidence;
+            for (int i = 0; i < fit.parameter_count; i++) {
+                best_start[i] = fit.parameters[i].value;
+            }
+        }
+        wa_fit_free(&fit);
+    }
+    if (!isfinite(best)) {
+        return WA_OK;
+    }
+    return wa_fit_run(experiment, &generic->sample, NULL, best_start, &generic->fit, error);
+}
+
+/* Protons that the run shows: those that are at least half removed (added) within the readings.
+ * A strong acid's proton is shown though its constant is not. */
+static int shown_protons(const struct wa_experiment *experiment, const struct wa_generic *generic)
+{
+    const bool base = experiment->titrant_charge > 0.0;
+    double lowest = INFINITY, highest = -INFINITY;
+    for (size_t p = 0; p < experiment->count; p++) {
+        lowest = fmin(lowest, experiment->reading[p]);
+        highest = fmax(highest, experiment->reading[p]);
+    }
+    int shown = 0;
+    const int first = base ? generic->lost : 0;
+    const int end = base ? generic->step_count : generic->lost;
+    for (int step = first; step < end; step++) {
+        const int index = wa_fit_find(&generic->fit, WA_PARAMETER_PK, 0, step);
+        const struct wa_parameter *pK = &generic->fit.parameters[index];
+        const bool beyond = base ? pK->value > highest : pK->value < lowest;
+        shown += !beyond || pK->u < 0.25 * unseen_u ? 1 : 0;
+    }
+    return shown;
+}
+
+static int by_evidence(const void *a, const void *b)
+{
+    const struct wa_generic *first = a, *second = b;
+    return (first->probability < second->probability) - (first->probability > second->probability);
+}
+
+static void weigh(const struct wa_experiment *experiment, struct wa_proton_study *study)
+{
+    double best = -INFINITY, sum = 0.0;
+    for (int i = 0; i < study->count; i++) {
+        best = fmax(best, study->generic[i].fit.log_evidence + study->generic[i].log_prior);
+    }
+    for (int i = 0; i < study->count; i++) {
+        struct wa_generic *generic = &study->generic[i];
+        generic->probability = exp(generic->fit.log_evidence + generic->log_prior - best);
+        sum += generic->probability;
+    }
+    study->log_evidence = best + log(sum);
+    for (int i = 0; i < study->count; i++) {
+        struct wa_generic *generic = &study->generic[i];
+        generic->probability /= sum;
+        generic->shown = shown_protons(experiment, generic);
+        study->by_count[generic->shown] += generic->probability;
+    }
+    qsort(study->generic, (size_t)study->count, sizeof study->generic[0], by_evidence);
+}
+
+/* Fit one generic acid and keep it when it converged. */
+static enum wa_status try_generic(const struct wa_experiment *experiment,
+                                  const struct wa_curve *curve, int step_count, int lost,
+                                  int charge, double prior, struct wa_proton_study *study,
+                                  double *log_evidence, struct wa_error *error)
+{
+    struct wa_generic *generic = &study->generic[study->count];
+    *generic = (struct wa_generic){.step_count = step_count, .lost = lost, .charge = charge};
+    /* The constants of one acid are an unordered set under their prior: n! orders are one. */
+    generic->log_prior = log(prior) + lgamma(step_count + 1.0);
+    wa_generic_sample(experiment, step_count, lost, charge, &generic->sample);
+    const enum wa_status status = fit_generic(experiment, curve, generic, error);
+    *log_evidence = -INFINITY;
+    if (status == WA_OK && generic->fit.converged) {
+        *log_evidence = generic->fit.log_evidence + generic->log_prior;
+        study->count++;
+    } else {
+        wa_fit_free(&generic->fit);
+    }
+    return status;
+}
+
+enum wa_status wa_proton_study_run(const struct wa_experiment *experiment,
+                                   const struct wa_curve *curve, struct wa_proton_study *study,
+                                   struct wa_error *error)
+{
+    const bool base = experiment->titrant_charge > 0.0;
+    double best = -INFINITY;
+    *study = (struct wa_proton_study){.count = 0};
+    for (int protons = 1; protons <= WA_GENERIC_STEPS_MAX; protons++) {
+        double best_here = -INFINITY;
+        for (int hidden = 0; hidden <= 1 && protons + hidden <= WA_GENERIC_STEPS_MAX; hidden++) {
+            /* By base the acid is titrated from `hidden` protons lost; by acid the base takes up
+             * `protons` and may hold `hidden` more at the start. */
+            const int steps = protons + hidden;
+            const int lost = base ? hidden : protons;
+            for (int charged = 0; charged <= 1; charged++) {
+                const int charge = charged == 0 ? 0 : (base ? 1 : steps);
+                const double prior = prior_by_steps[protons - 1] * 0.5 *
+                                     (hidden == 1 ? prior_already_lost : 1.0 - prior_already_lost);
+                double evidence;
+                const enum wa_status status = try_generic(experiment, curve, steps, lost, charge,
+                                                          prior, study, &evidence, error);
+                if (status != WA_OK) {
+                    wa_proton_study_free(study);
+                    return status;
+                }
+                best_here = fmax(best_here, evidence);
+            }
+        }
+        if (best_here < best - hopeless) {
+            break;
+        }
+        best = fmax(best, best_here);
+    }
+    if (study->count > 0) {
+        weigh(experiment, study);
+    }
+    return WA_OK;
+}
+
+void wa_proton_study_free(struct wa_proton_study *study)
+{
+    if (study != NULL) {
+        for (int i = 0; i < study->count; i++) {
+            wa_fit_free(&study->generic[i].fit);
+        }
+        study->count = 0;
+    }
+}
