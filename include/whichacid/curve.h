@@ -43,12 +43,17 @@ struct wa_buffer_region {
 
 /** A half-equivalence reading; pH readings only. */
 struct wa_half_equivalence {
-    int step;          /**< proton counted in this run, from 1 */
-    double volume_mL;  /**< half-way between successive equivalence volumes */
-    double pH;         /**< smoothed pH there */
-    double pKa;        /**< pH corrected by the charge balance for free H+ / OH- and dilution */
-    double u;          /**< standard uncertainty of pKa, electrode offset included */
-    double correction; /**< pKa - pH */
+    int step;         /**< proton counted in this run, from 1 */
+    double volume_mL; /**< half-way between successive equivalence volumes */
+    double pH;        /**< smoothed pH there */
+    /** pH corrected by the charge balance for free H+ / OH-, dilution and the neighbouring steps.
+     * A mixed (apparent) constant: activity of H+, concentrations of the rest, at ionic_strength.
+     * No correction to zero ionic strength is made; u holds 0.03 for the drift of activity
+     * coefficients over the run. */
+    double pKa;
+    double u;              /**< standard uncertainty of pKa, electrode offset included */
+    double correction;     /**< pKa - pH */
+    double ionic_strength; /**< mol/L, estimated there (of a 1:1 salt), for a later conversion */
     bool merged; /**< the interval holds more than one proton: the value is their mean, not a pKa */
 };
 
