@@ -38,6 +38,20 @@ struct wa_quantity {
 enum wa_status wa_quantity_parse(const char *text, enum wa_dimension dimension,
                                  struct wa_quantity *quantity, struct wa_error *error) WA_MUST_USE;
 
+/**
+ * The same with words before or after: "0.1 mol/L KCl", "KCl, 0.1 mol/L", "50 mL (pipette)".
+ * Text that reads as a whole is read as a whole.
+ */
+enum wa_status wa_quantity_parse_within(const char *text, enum wa_dimension dimension,
+                                        struct wa_quantity *quantity,
+                                        struct wa_error *error) WA_MUST_USE;
+
+/**
+ * Look for a number followed by a unit of that dimension among other words ("0.1 M NaOH").
+ * @return whether one was found; a number without a unit does not count
+ */
+bool wa_quantity_find(const char *text, enum wa_dimension dimension, struct wa_quantity *quantity);
+
 /** The dimension's own unit as printed ("mL", "g/mol", "" for a plain number). */
 const char *wa_dimension_unit(enum wa_dimension dimension);
 

@@ -21,11 +21,13 @@ enum wa_origin {
 
 /** One measured point. Absent extras are NaN. */
 struct wa_point {
-    double volume_mL;     /**< running total of titrant added */
-    double reading;       /**< pH, or mV, as run.reading_kind says */
-    double time_s;        /**< seconds, NaN when not recorded */
-    double temperature_C; /**< NaN when not recorded */
-    long line;            /**< line in the file, from 1 */
+    double volume_mL;       /**< running total of titrant added */
+    double reading;         /**< pH, or mV, as run.reading_kind says */
+    double time_s;          /**< seconds, NaN when not recorded */
+    double temperature_C;   /**< NaN when not recorded */
+    long line;              /**< line in the file, from 1 */
+    double written_volume;  /**< the volume cell as written, in run.volume_unit */
+    double written_reading; /**< the reading cell as written, in run.reading_unit */
 };
 
 /** A note as written, kept for the report whether its name is known or not. */
@@ -33,7 +35,9 @@ struct wa_note {
     char *name; /**< lower case, single spaces: "sample mass" */
     char *text; /**< value as written, UTF-8 */
     enum wa_origin origin;
-    long line; /**< line in the file; 0 for an option */
+    long line;  /**< line in the file; 0 for an option */
+    bool loose; /**< a line such as "name: value" without a comment mark, perhaps an instrument's:
+                     a value that cannot be read is a remark then, not an error */
 };
 
 /** A row that is not used. */
@@ -53,7 +57,7 @@ struct wa_noted {
 
 /**
  * The notes that the computation uses, with units converted and defaults filled in. Defaults are
- * listed in wa_conditions_defaults().
+ * listed by wa_conditions_defaults().
  */
 struct wa_conditions {
     struct wa_noted sample_mass;           /**< g */
@@ -95,6 +99,12 @@ struct wa_run {
     char decimal_mark;      /**< '.' or ',' */
     char volume_header[64]; /**< header words the volume column had, "" when none */
     char reading_header[64];
+    char volume_unit[8];  /**< unit of points[].written_volume: "mL", "µL", "L" */
+    char reading_unit[8]; /**< unit of points[].written_reading: "pH", "mV", "V" */
+    int volume_decimals;  /**< most decimals that the volume column was written with */
+    int reading_decimals; /**< the same of the reading column */
+    int volume_direction; /**< +1; -1 for a burette that was read counting down */
+    bool reading_from_mV; /**< readings were mV and are pH now, by a noted calibration */
 };
 
 /** The runs of one or more files. */
@@ -114,9 +124,49 @@ enum wa_status wa_run_remark(struct wa_run *run, struct wa_error *error, const c
                              ...) WA_MUST_USE WA_PRINTF(3, 4);
 
 /**
- * Compute run->conditions from run->notes and defaults. Options count as notes with origin
- * WA_ORIGIN_OPTION and win over notes; a note given twice in the file with different numbers is
- * WA_ERROR_INPUT naming both lines.
+ * Append a note (copied); the name is folded to lower case with single spaces.
+ * @param[in] line  line in the file, 0 for an option
+ */
+enum wa_status wa_run_note(struct wa_run *run, const char *name, const char *text,
+                           enum wa_origin origin, long line, struct wa_error *error) WA_MUST_USE;
+
+/**
+ * Append a row that is not used (text and reason copied; text is shortened past 120 bytes).
+ * @param[in] text  UTF-8, `length` bytes
+ */
+enum wa_status wa_run_set_aside(struct wa_run *run, long line, const char *text, size_t length,
+                                const char *reason, struct wa_error *error) WA_MUST_USE;
+
+/**
+ * The text of a note by its known name or one of its other names: the option if there is one, else
+ * the last in the file; NULL when nobody gave it.
+ */
+const struct wa_note *wa_run_find_note(const struct wa_run *run, const char *name);
+
+/** One name of design 3.1 that an option may carry, in the order of a help text. */
+struct wa_note_name {
+    const char *name;    /**< "sample mass" */
+    const char *example; /**< "0.3127 g" */
+    const char *help;    /**< what it means, one line */
+};
+
+/** The names known. @param[out] count  how many */
+const struct wa_note_name *wa_note_names(size_t *count);
+
+/**
+ * The known name that a folded name stands for ("einwaage" is "sample mass"), or NULL.
+ */
+const char *wa_note_known_name(const char *folded);
+
+/** Sentences on what wa_run_apply_notes assumes for a note nobody gave; NULL ends the list. */
+const char *const *wa_conditions_defaults(void);
+
+/**
+ * Compute run->conditions from run->notes and defaults. An mV run whose notes calibrate the
+ * electrode becomes a pH run: slope and offset are then corrected for and their uncertainties
+ * stay. Each default is said in a remark. To be called once a run. Options count as notes with
+ * origin WA_ORIGIN_OPTION and win over notes; a note given twice in the file with different numbers
+ * is WA_ERROR_INPUT naming both lines.
  */
 enum wa_status wa_run_apply_notes(struct wa_run *run, struct wa_error *error) WA_MUST_USE;
 
