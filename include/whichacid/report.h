@@ -6,7 +6,7 @@
 
 /** How to write a report. */
 struct wa_report_options {
-    int columns;         /**< width of the text, 80 at least; a plot is drawn when it fits */
+    int columns;         /**< width of the text, 0: 80; held within 40..100; a plot needs 72 */
     bool colour;         /**< escape sequences for emphasis, never the only carrier of meaning */
     const char *version; /**< of the program */
 };

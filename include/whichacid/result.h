@@ -156,6 +156,15 @@ struct wa_result {
     size_t overlaid_count;
 };
 
+/**
+ * Say which bytes the result was made from. An input of that name without a fingerprint gets it,
+ * else an input is added.
+ * @param[in] sha256  64 hexadecimal digits
+ * @param[in] runs    runs that the file held
+ */
+enum wa_status wa_result_add_input(struct wa_result *result, const char *file, const char *sha256,
+                                   size_t runs, struct wa_error *error) WA_MUST_USE;
+
 /** Free everything the result owns. NULL is allowed. */
 void wa_result_free(struct wa_result *result);
 
