@@ -173,7 +173,7 @@ static void candidates_can_be_checked(void **state)
     char *text = report_of(plain_words, 80);
     const char *list = strstr(text, "CANDIDATES");
     assert_non_null(list);
-    assert_non_null(strstr(list, "1.  98.1 %"));
+    assert_non_null(strstr(list, "1.   98.1 %"));
     assert_non_null(strstr(list, "60.05 g/mol; measured is off by -0.4 u"));
     assert_non_null(strstr(list, "pKa 4.756 ± 0.010 (+0.5 u); 13.10 ± 0.30 (not seen here)"));
     assert_non_null(strstr(list, "0.4 %  something that is not in the table"));

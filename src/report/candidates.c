@@ -9,6 +9,9 @@
 #define SHARE_IN_FULL 0.01
 #define RANK_IN_FULL 3
 
+#define INDENT "       " /* of what is said about a candidate */
+#define HANG 9
+
 static bool is_given(const char *text)
 {
     return text != NULL && text[0] != '\0';
@@ -23,7 +26,7 @@ static void write_molar_mass(struct report_writer *writer,
     }
     char off[32];
     report_deviation(off, sizeof off, candidate->molar_mass_deviation);
-    report_paragraph(writer, "       ", 9, "molar mass %.2f g/mol%s%s", candidate->molar_mass,
+    report_paragraph(writer, INDENT, HANG, "molar mass %.2f g/mol%s%s", candidate->molar_mass,
                      off[0] != '\0' ? "; measured is off by " : "; none was measured", off);
 }
 
@@ -43,7 +46,7 @@ static void write_steps(struct report_writer *writer, const struct wa_result_can
     if (words.failed) {
         writer->text.failed = true;
     } else if (words.length > 0) {
-        report_paragraph(writer, "       ", 9, "pKa %s", words.bytes);
+        report_paragraph(writer, INDENT, HANG, "pKa %s", words.bytes);
     }
     wa_text_free(&words);
 }
@@ -54,7 +57,7 @@ static void write_name(struct report_writer *writer, const struct wa_result_cand
     char share[32];
     char first[64];
     report_probability(share, sizeof share, candidate->probability);
-    snprintf(first, sizeof first, "  %2d.  %s  ", candidate->rank, share);
+    snprintf(first, sizeof first, "  %2d. %8s  ", candidate->rank, share);
     const char *name = is_given(candidate->form_name)   ? candidate->form_name
                        : is_given(candidate->acid_name) ? candidate->acid_name
                                                         : "(no name)";
@@ -62,7 +65,7 @@ static void write_name(struct report_writer *writer, const struct wa_result_cand
     if (!in_full && isfinite(candidate->molar_mass) && candidate->molar_mass > 0.0) {
         snprintf(mass, sizeof mass, ", %.2f g/mol", candidate->molar_mass);
     }
-    report_paragraph(writer, first, 9, "%s [%s]%s", name,
+    report_paragraph(writer, first, HANG, "%s [%s]%s", name,
                      candidate->key != NULL ? candidate->key : "", mass);
 }
 
@@ -77,17 +80,17 @@ static void write_candidate(struct report_writer *writer,
     write_molar_mass(writer, candidate);
     write_steps(writer, candidate);
     if (isfinite(candidate->misfit) && candidate->misfit > 0.0) {
-        report_paragraph(writer, "       ", 9, "misfit %.2f u a point (1 is expected)",
+        report_paragraph(writer, INDENT, HANG, "misfit %.2f u a point (1 is expected)",
                          candidate->misfit);
     }
     if (is_given(candidate->why)) {
-        report_paragraph(writer, "       ", 9, "why: %s", candidate->why);
+        report_paragraph(writer, INDENT, HANG, "why: %s", candidate->why);
     }
     if (is_given(candidate->others)) {
-        report_paragraph(writer, "       ", 9, "cannot be told here from: %s", candidate->others);
+        report_paragraph(writer, INDENT, HANG, "cannot be told here from: %s", candidate->others);
     }
     if (is_given(candidate->sources)) {
-        report_paragraph(writer, "       ", 9, "constants from: %s", candidate->sources);
+        report_paragraph(writer, INDENT, HANG, "constants from: %s", candidate->sources);
     }
 }
 
@@ -99,7 +102,9 @@ void report_candidates(struct report_writer *writer, const struct wa_result *res
     }
     char share[32];
     report_probability(share, sizeof share, result->not_in_table);
-    report_paragraph(writer, "   -   ", 9, "%s  something that is not in the table", share);
+    char first[64];
+    snprintf(first, sizeof first, "   -  %8s  ", share);
+    report_paragraph(writer, first, HANG, "something that is not in the table");
     if (result->candidate_count == 0) {
         report_paragraph(writer, "  ", 2, "No form of the table is listed.");
         return;

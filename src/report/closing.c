@@ -118,8 +118,7 @@ static void write_findings(struct report_writer *writer, const struct wa_result 
                 report_heading(writer, "FINDINGS");
                 headed = true;
             }
-            report_paragraph(writer, "  - ", 4, "%s%zu%s%s", "Run ", i + 1, ": ",
-                             result->curves[i].remarks[k]);
+            report_paragraph(writer, "  - ", 4, "Run %zu: %s", i + 1, result->curves[i].remarks[k]);
         }
     }
 }

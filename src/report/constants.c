@@ -20,8 +20,8 @@ static void fill_volume(struct report_table *table, size_t column,
 static void write_points(struct report_writer *writer, const struct wa_result *result)
 {
     struct report_table table = {0};
-    static const char *const heads[] = {
-        "point", "volume / mL", "pH", "protons", "from", "inflection / mL", "height in its u"};
+    static const char *const heads[] = {"point", "volume / mL",     "pH",        "protons",
+                                        "from",  "inflection / mL", "height / u"};
     report_row(&table);
     for (size_t i = 0; i < sizeof heads / sizeof heads[0]; i++) {
         report_cell(&table, i, "%s", heads[i]);
@@ -51,24 +51,27 @@ static void write_points(struct report_writer *writer, const struct wa_result *r
     report_table_draw(writer, &table);
 }
 
+/* One row a method, one column a point: most runs have one or two points. */
 static void write_methods(struct report_writer *writer, const struct wa_result *result)
 {
+    static const char *const names[] = {"steepest slope", "curvature zero", "Gran, before",
+                                        "Gran, after", "whole curve"};
     struct report_table table = {0};
-    static const char *const heads[] = {"by method / mL", "slope",      "curvature",
-                                        "Gran before",    "Gran after", "whole curve"};
     report_row(&table);
-    for (size_t i = 0; i < sizeof heads / sizeof heads[0]; i++) {
-        report_cell(&table, i, "%s", heads[i]);
-    }
+    report_cell(&table, 0, "method");
     for (size_t i = 0; i < result->equivalence_count; i++) {
-        const struct wa_result_equivalence *point = &result->equivalence_points[i];
+        report_cell(&table, i + 1, "E%zu / mL", i + 1);
+    }
+    for (size_t method = 0; method < sizeof names / sizeof names[0]; method++) {
         report_row(&table);
-        report_cell(&table, 0, "E%zu", i + 1);
-        fill_volume(&table, 1, &point->first_derivative);
-        fill_volume(&table, 2, &point->second_derivative);
-        fill_volume(&table, 3, &point->gran_before);
-        fill_volume(&table, 4, &point->gran_after);
-        fill_volume(&table, 5, &point->fit);
+        report_cell(&table, 0, "%s", names[method]);
+        for (size_t i = 0; i < result->equivalence_count; i++) {
+            const struct wa_result_equivalence *point = &result->equivalence_points[i];
+            const struct wa_volume_estimate *const estimates[] = {
+                &point->first_derivative, &point->second_derivative, &point->gran_before,
+                &point->gran_after, &point->fit};
+            fill_volume(&table, i + 1, estimates[method]);
+        }
     }
     report_table_draw(writer, &table);
 }

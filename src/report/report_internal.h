@@ -7,7 +7,7 @@
 #include "whichacid/report.h"
 
 /** Most columns and bytes of a cell of a table. */
-#define REPORT_CELLS_MAX 8
+#define REPORT_CELLS_MAX 10
 #define REPORT_CELL_SIZE 72
 
 /** Where the report grows. */

@@ -31,6 +31,9 @@ static void write_verdict(struct report_writer *writer, const struct wa_result *
         report_paragraph(writer, "", 0, "Verdict: %s, probability %s (at least %s is asked for).",
                          verdict_word(verdict->kind), share, asked);
     }
+    if (verdict->form_count > 1 && verdict->forms != NULL) {
+        report_paragraph(writer, "The set: ", 2, "%s", verdict->forms);
+    }
     if (result->forms_considered > 0) {
         report_paragraph(
             writer, "", 0, "Compared: %zu forms of the table, %zu of them with every point%s%s%s.",

@@ -93,7 +93,7 @@ void report_paragraph(struct report_writer *writer, const char *first, size_t ha
     va_end(arguments);
 }
 
-#define LABEL_COLUMNS ((size_t)24)
+#define LABEL_COLUMNS ((size_t)26)
 
 void report_item(struct report_writer *writer, const char *label, const char *format, ...)
 {
