@@ -84,9 +84,10 @@ struct wa_form {
     double spectator_z2;  /**< sum of z^2 over those ions, for the ionic strength */
     double molar_mass;    /**< g/mol, from the formula and the atomic weights */
     double molar_mass_u;
-    double solubility_mol_L;   /**< of the form in water, NaN when unknown */
-    double melting_point_C;    /**< NaN when unknown */
-    const char *melting_point; /**< as written */
+    double published_molar_mass; /**< as a handbook prints it, NaN when the row gives none */
+    double solubility_mol_L;     /**< of the form in water, NaN when unknown */
+    double melting_point_C;      /**< NaN when unknown */
+    const char *melting_point;   /**< as written */
     const char *cas;
     const char *hazards; /**< GHS hazard statement codes */
     const char *care;
@@ -248,5 +249,76 @@ double wa_step_pKa_at(const struct wa_step *step, double temperature_C, double *
  */
 double wa_constant_to_zero_ionic_strength(double pKc, int charge, double ionic_strength,
                                           double temperature_C, double *u);
+
+/** What a table holds, counted. */
+struct wa_table_statistics {
+    size_t acids;
+    size_t acids_modelled;
+    size_t acids_sourced;  /**< every step has a row with a source */
+    size_t acids_enthalpy; /**< at least one step with a known enthalpy */
+    size_t acids_from_user;
+    size_t constants;
+    size_t constants_sourced;
+    size_t forms;
+    size_t forms_with_cas;
+    size_t forms_with_hazards;
+    size_t forms_with_solubility;
+    size_t forms_with_melting_point;
+    size_t forms_of_several_parts;
+    size_t forms_from_user;
+};
+
+/**
+ * Look for mistakes that loading does not stumble over: registry numbers whose check digit is
+ * wrong, molar masses that contradict the formula, sources and hazard codes nobody defined,
+ * formulas with an odd number of electrons, acids that no form brings.
+ * @param[in,out] table  findings are appended to table->problems, which are sorted by file and line
+ */
+enum wa_status wa_table_check(struct wa_table *table, struct wa_error *error) WA_MUST_USE;
+
+/** Count what a table holds. */
+void wa_table_count(const struct wa_table *table, struct wa_table_statistics *statistics);
+
+/** Whether a CAS registry number is well formed and its check digit is right. */
+bool wa_cas_is_valid(const char *cas);
+
+/** A system that resembles a set of pKa values. */
+struct wa_near {
+    int acid;        /**< index into table.acids */
+    int form;        /**< the form whose molar mass is nearest, -1 when no mass was asked for */
+    double distance; /**< root of the mean square of the differences, in pK */
+    double mass_off; /**< molar mass of the form less the one asked for, g/mol; 0 without one */
+    int unmatched;   /**< further steps between 2 and 12 that nobody asked for */
+};
+
+/**
+ * The systems whose steps come nearest to some pKa values, nearest first. Each value takes a step
+ * of its own, in order. Steps nobody asked for count against a system that shows them in water.
+ * @param[in]  pKa         in any order, may be NULL when pKa_count is 0
+ * @param[in]  molar_mass  g/mol, or NaN; then forms farther than 2 % are left out
+ * @param[in]  most_apart  largest distance that is still listed, in pK
+ * @param[out] near        room for `room` entries
+ * @return entries filled
+ */
+size_t wa_table_near(const struct wa_table *table, const double *pKa, size_t pKa_count,
+                     double molar_mass, double most_apart, struct wa_near *near, size_t room);
+
+/** A cell of a row to be appended: header word and text. */
+struct wa_table_cell {
+    const char *column;
+    const char *text; /**< NULL leaves the cell empty */
+};
+
+/**
+ * Append a row to a table file, in that file's own columns and separator; a file that does not
+ * exist is begun with all header words of its kind. The file is replaced as a whole, so that a
+ * crash leaves the old one. Text that is not UTF-8 is rewritten as UTF-8.
+ * @param[in] path   the file
+ * @param[in] kind   name of the table's file of that kind, such as "acids.csv"
+ * @param[in] cells  in any order; a filled cell whose column the file lacks is WA_ERROR_INPUT
+ */
+enum wa_status wa_table_append(const char *path, const char *kind,
+                               const struct wa_table_cell *cells, size_t cell_count,
+                               struct wa_error *error) WA_MUST_USE;
 
 #endif

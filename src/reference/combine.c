@@ -11,6 +11,7 @@
 #define ENTHALPY_GIVEN_U 2.0 /* kJ/mol, of one published enthalpy; the rows give none */
 #define MODEL_U 0.02         /* pK per |change of z^2| / 2 beyond WEAK_IONIC_STRENGTH */
 #define WEAK_IONIC_STRENGTH 0.05
+#define OUT_OF_RANGE_U 0.2 /* the same beyond WA_DAVIES_LIMIT, where the equation does not hold */
 
 /* A concentration constant Kc = [H][A]/[HA] at ionic strength I and K = Kc γ(H) γ(A)/γ(HA), with
  * lg γ = z^2 g (Davies 1962), give pK = pKc + 2 g (z - 1) for HA of charge z. Its uncertainty is
@@ -23,9 +24,11 @@ double wa_constant_to_zero_ionic_strength(double pKc, int charge, double ionic_s
     double at = wa_davies_log10_gamma(ionic_strength, medium.debye_huckel_A, WA_DAVIES_COEFFICIENT);
     double beside = wa_davies_log10_gamma(ionic_strength, medium.debye_huckel_A,
                                           WA_DAVIES_COEFFICIENT + WA_DAVIES_COEFFICIENT_U);
-    double model = ionic_strength > WEAK_IONIC_STRENGTH ? MODEL_U * fabs(weight) / 2.0 : 0.0;
+    double model = ionic_strength > WA_DAVIES_LIMIT       ? OUT_OF_RANGE_U
+                   : ionic_strength > WEAK_IONIC_STRENGTH ? MODEL_U
+                                                          : 0.0;
     if (u != NULL) {
-        *u = hypot(weight * (beside - at), model);
+        *u = hypot(weight * (beside - at), model * fabs(weight) / 2.0);
     }
     return pKc + weight * at;
 }

@@ -49,8 +49,8 @@ static const struct {
 
 const char *table_column_word(enum table_kind kind, int column)
 {
-    const char *word = kinds[kind].words[column];
-    return word[0] == REQUIRED_MARK ? word + 1 : word;
+    const char *word = column < COLUMNS_MAX ? kinds[kind].words[column] : NULL;
+    return word != NULL && word[0] == REQUIRED_MARK ? word + 1 : word;
 }
 
 const char *table_kind_file(enum table_kind kind)
@@ -130,7 +130,8 @@ static enum wa_status convert(const char *path, const char *encoding, char **byt
     return WA_OK;
 }
 
-static enum wa_status to_utf8(const char *path, char **bytes, size_t *size, struct wa_error *error)
+enum wa_status table_text_to_utf8(const char *path, char **bytes, size_t *size,
+                                  struct wa_error *error)
 {
     const unsigned char *start = (const unsigned char *)*bytes;
     if (*size >= 2 &&
@@ -162,7 +163,7 @@ struct splitter {
     long unclosed_line; /* where a quotation mark was opened and never closed, or 0 */
 };
 
-static char guess_delimiter(const char *header)
+char table_guess_delimiter(const char *header)
 {
     size_t commas = 0;
     size_t semicolons = 0;
@@ -390,7 +391,7 @@ static enum wa_status split_file(struct loader *loader, char *text, enum table_k
             header += strcspn(header, "\n");
             header += *header == '\n';
         }
-        splitter.delimiter = guess_delimiter(header);
+        splitter.delimiter = table_guess_delimiter(header);
     }
     if (!split_rows(&splitter)) {
         return wa_fail_memory(error);
@@ -429,7 +430,7 @@ enum wa_status table_file_read(struct loader *loader, const char *path, enum tab
     for (size_t i = 0; i < size; i++) {
         loader->hash = (loader->hash ^ (unsigned char)bytes[i]) * UINT64_C(1099511628211);
     }
-    status = to_utf8(path, &bytes, &size, error);
+    status = table_text_to_utf8(path, &bytes, &size, error);
     if (status == WA_OK) {
         file->name = storage_copy(loader->table.storage, path, strlen(path));
         status = file->name == NULL ? wa_fail_memory(error) : WA_OK;

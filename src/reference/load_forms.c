@@ -246,7 +246,9 @@ static bool read_form(struct loader *loader, const struct table_file *file,
     };
     const char *parts = required_cell(loader, file, row, FORM_PARTS);
     if (form->key == NULL || form->name == NULL || form->formula == NULL || parts == NULL ||
-        !numeric_cell(loader, file, row, FORM_SOLUBILITY, 0, 1e5, false, NAN, &solubility)) {
+        !numeric_cell(loader, file, row, FORM_SOLUBILITY, 0, 1e5, false, NAN, &solubility) ||
+        !numeric_cell(loader, file, row, FORM_MOLAR_MASS, 1, 1e5, false, NAN,
+                      &form->published_molar_mass)) {
         return false;
     }
     if (!parts_parse(loader, parts, form->parts, &form->part_count, reason, sizeof reason)) {

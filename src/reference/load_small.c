@@ -42,9 +42,11 @@ void take_atomic_weights(struct loader *loader, const struct table_file *file)
         const char *symbol = required_cell(loader, file, row, WEIGHT_SYMBOL);
         double weight;
         double half_width;
+        double number;
         if (symbol == NULL ||
             !numeric_cell(loader, file, row, WEIGHT_WEIGHT, 1.0, 400.0, true, NAN, &weight) ||
-            !numeric_cell(loader, file, row, WEIGHT_U, 0.0, 5.0, true, NAN, &half_width)) {
+            !numeric_cell(loader, file, row, WEIGHT_U, 0.0, 5.0, true, NAN, &half_width) ||
+            !numeric_cell(loader, file, row, WEIGHT_NUMBER, 1, 118, false, 0.0, &number)) {
             continue;
         }
         size_t length = strlen(symbol);
@@ -72,7 +74,8 @@ void take_atomic_weights(struct loader *loader, const struct table_file *file)
             storage->element_count++;
             storage->element_of[symbol[0] - 'A'][length == 2 ? symbol[1] - 'a' : 26] = element + 1;
         }
-        struct element entry = {.weight = weight, .u = half_width / sqrt(3.0)};
+        struct element entry = {
+            .weight = weight, .u = half_width / sqrt(3.0), .number = (int)lround(number)};
         memcpy(entry.symbol, symbol, length);
         storage->elements[element] = entry;
     }

@@ -35,6 +35,7 @@ struct element {
     char symbol[4];
     double weight; /* g/mol */
     double u;      /* standard uncertainty */
+    int number;    /* atomic number, 0 when the table does not give it */
 };
 
 struct hazard {
@@ -254,9 +255,14 @@ struct loader {
 enum wa_status table_file_read(struct loader *loader, const char *path, enum table_kind wanted,
                                struct table_file *file, struct wa_error *error) WA_MUST_USE;
 void table_file_free(struct table_file *file);
+/** Turn UTF-16 and Windows-1252 into UTF-8 in place of the bytes, which are from malloc. */
+enum wa_status table_text_to_utf8(const char *path, char **bytes, size_t *size,
+                                  struct wa_error *error) WA_MUST_USE;
+/** The separator of a header line: comma, semicolon or tab. */
+char table_guess_delimiter(const char *header);
 /** Cell of a row by column number, "" when the file has no such column. Never NULL. */
 const char *table_cell(const struct table_file *file, const struct table_row *row, int column);
-/** Header word of a column. */
+/** Header word of a column, NULL behind the last. */
 const char *table_column_word(enum table_kind kind, int column);
 /** File name of a kind inside a table folder. */
 const char *table_kind_file(enum table_kind kind);
