@@ -13,8 +13,8 @@
 #include <string.h>
 
 static const int default_iterations = 60;
-static const size_t steps_a_round = 5;
-static const double settled = 2e-3; /* in posterior standard deviations */
+static const size_t steps_a_round = 1; /* more would polish weights that are about to move */
+static const double settled = 5e-3;    /* in posterior standard deviations */
 
 /* lg 4: two alike and independent sites; the softness lets hydrogen-bonded pairs pass. */
 static const double alike_spacing = 0.60205999132796239;
