@@ -117,10 +117,12 @@ enum wa_status wa_titration_volume(const struct wa_titration *titration, double 
                                    double *volume_mL, struct wa_error *error) WA_MUST_USE;
 
 /**
- * Fractions of the species of a system at a pH.
- * @param[out] fraction  step_count + 1 values, by protons lost
+ * Fractions of the species of a system.
+ * @param[in]  hydrogen_activity  10^-pH
+ * @param[in]  gamma              activity coefficient of a singly charged ion
+ * @param[out] fraction           step_count + 1 values, by protons lost
  */
-void wa_system_fractions(const struct wa_system *system, double pH, double log10_gamma,
+void wa_system_fractions(const struct wa_system *system, double hydrogen_activity, double gamma,
                          double *fraction);
 
 #endif

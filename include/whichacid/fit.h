@@ -41,10 +41,12 @@ struct wa_experiment {
     struct wa_prior ln_noise_reading;  /**< ln of the standard deviation of a pH reading */
     struct wa_prior ln_noise_volume;   /**< ln of the standard deviation of a volume in mL */
     double background;                 /**< mol/L of 1:1 electrolyte in the sample */
+    double equivalents;    /**< protons that a mole of titrant takes or gives, positive */
     double titrant_charge; /**< spectator charge a mole of titrant brings: +1 NaOH, -1 HCl */
-    bool titrant_is_weak;
-    int weak_charge; /**< of the fully protonated species of a weak titrant */
+    bool titrant_is_weak;  /**< it brings an acid system of its own (sulfuric acid too) */
+    int weak_charge;       /**< of the fully protonated species of that system */
     int weak_step_count;
+    double weak_count; /**< molecules of it in one formula unit of titrant */
     double weak_pK[WA_PROTONS_MAX];
 };
 

@@ -74,12 +74,12 @@ static double species_weights(const struct wa_system *system, double hydrogen_ac
     return sum;
 }
 
-void wa_system_fractions(const struct wa_system *system, double pH, double log10_gamma,
+void wa_system_fractions(const struct wa_system *system, double hydrogen_activity, double gamma,
                          double *fraction)
 {
-    const double sum = species_weights(system, exp(-ln10 * pH), exp(ln10 * log10_gamma), fraction);
+    const double inverse = 1.0 / species_weights(system, hydrogen_activity, gamma, fraction);
     for (int i = 0; i <= system->step_count; i++) {
-        fraction[i] /= sum;
+        fraction[i] *= inverse;
     }
 }
 

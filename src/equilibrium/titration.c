@@ -64,11 +64,11 @@ struct charges {
     double sample_ionic, titrant_ionic;
 };
 
-static void add_charges(const struct wa_titration_component *component, double pH,
-                        double log10_gamma, double total_L, double added_L, struct charges *charges)
+static void add_charges(const struct wa_titration_component *component, double activity,
+                        double gamma, double total_L, double added_L, struct charges *charges)
 {
     double fraction[WA_PROTONS_MAX + 1];
-    wa_system_fractions(&component->system, pH, log10_gamma, fraction);
+    wa_system_fractions(&component->system, activity, gamma, fraction);
     double z_mean = 0.0, z2_mean = 0.0;
     for (int i = 0; i <= component->system.step_count; i++) {
         const double z = component->system.charge - i;
@@ -93,18 +93,19 @@ enum wa_status wa_titration_volume(const struct wa_titration *titration, double 
 {
     const struct wa_medium *medium = &titration->medium;
     const double start_L = titration->solution_volume_L;
+    const double activity = pow(10.0, -pH);
     double ionic_strength = 0.05, added_L = 0.0;
     for (int iteration = 0; iteration < 500; iteration++) {
         const double log10_gamma = wa_davies_log10_gamma(ionic_strength, medium->debye_huckel_A,
                                                          titration->davies_coefficient);
-        const double inverse_gamma = pow(10.0, -log10_gamma);
-        const double hydrogen = medium->density * pow(10.0, -pH) * inverse_gamma;
-        const double hydroxide = medium->density * pow(10.0, pH - medium->pKw) * inverse_gamma;
+        const double gamma = pow(10.0, log10_gamma);
+        const double hydrogen = medium->density * activity / gamma;
+        const double hydroxide = medium->density * pow(10.0, pH - medium->pKw) / gamma;
         const double total_L = start_L + added_L;
         struct charges charges = {titration->sample_charge, titration->titrant_charge,
                                   titration->sample_ionic, titration->titrant_ionic};
         for (int k = 0; k < titration->component_count; k++) {
-            add_charges(&titration->components[k], pH, log10_gamma, total_L, added_L, &charges);
+            add_charges(&titration->components[k], activity, gamma, total_L, added_L, &charges);
         }
         const double free_charge = hydrogen - hydroxide;
         const double next_L =

@@ -112,28 +112,24 @@ static void set_priors(const struct wa_run *run, double last_volume_mL, double m
     experiment->background = c->background.known ? fmax(c->background.quantity.value, 0.0) : 0.0;
 }
 
-static void set_titrant(const struct wa_table *table, const struct wa_titrant *titrant, bool rises,
-                        struct wa_experiment *experiment)
+static void set_titrant(const struct wa_table *table, const struct wa_titrant *titrant,
+                        bool is_base, struct wa_experiment *experiment)
 {
-    experiment->titrant_is_base = titrant != NULL ? titrant->is_base : rises;
-    experiment->titrant_charge = experiment->titrant_is_base ? 1.0 : -1.0;
-    experiment->titrant_is_weak = false;
-    if (titrant == NULL) {
-        return;
-    }
-    experiment->titrant_charge *= titrant->protons > 0 ? titrant->protons : 1;
-    if (titrant->is_weak && table != NULL && titrant->acid >= 0) {
+    experiment->titrant_is_base = is_base;
+    experiment->equivalents = titrant != NULL && titrant->protons > 0 ? titrant->protons : 1;
+    experiment->titrant_charge = is_base ? experiment->equivalents : -experiment->equivalents;
+    experiment->titrant_is_weak = titrant != NULL && table != NULL && titrant->acid >= 0;
+    if (experiment->titrant_is_weak) {
         const struct wa_acid *acid = &table->acids[titrant->acid];
-        experiment->titrant_is_weak = true;
         experiment->weak_charge = acid->charge;
         experiment->weak_step_count = acid->step_count;
         for (int i = 0; i < acid->step_count; i++) {
             experiment->weak_pK[i] =
-                wa_pK_at_temperature(acid->steps[i].pKa, acid->steps[i].enthalpy,
-                                     acid->steps[i].heat_capacity, experiment->temperature_C);
+                wa_step_pKa_at(&acid->steps[i], experiment->temperature_C, NULL);
         }
         /* Its own ions carry the charge; the spectators follow from neutrality as added. */
-        experiment->titrant_charge = titrant->lost - acid->charge;
+        experiment->titrant_charge = titrant->lost - acid->charge * titrant->count;
+        experiment->weak_count = titrant->count;
     }
 }
 

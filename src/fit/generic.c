@@ -27,8 +27,8 @@ void wa_generic_sample(const struct wa_experiment *experiment, int step_count, i
     sample->spectator_z2[0] = abs(lost - charge);
     /* About one equivalent at the middle of the burette, within a factor of some twenty. */
     const double half_mL = 0.5 * experiment->volume_mL[experiment->count - 1];
-    const double equivalents = fabs(experiment->titrant_charge) * exp(experiment->ln_titrant.mean) *
-                               1e-3 * fmax(half_mL, 1e-6);
+    const double equivalents =
+        experiment->equivalents * exp(experiment->ln_titrant.mean) * 1e-3 * fmax(half_mL, 1e-6);
     sample->ln_amount[0] = (struct wa_prior){.mean = log(equivalents), .u = amount_ln_u};
 }
 
@@ -44,7 +44,8 @@ static double protons_lost(const struct wa_experiment *experiment,
     const double total_L = exp(experiment->ln_volume.mean) + added_L;
     const double hydrogen = exp(-ln10 * (pH + log10_gamma));
     const double hydroxide = exp(ln10 * (pH - medium.pKw - log10_gamma));
-    const double titrant = experiment->titrant_charge * exp(experiment->ln_titrant.mean);
+    const double titrant = (experiment->titrant_is_base ? 1.0 : -1.0) * experiment->equivalents *
+                           exp(experiment->ln_titrant.mean);
     return sample->parts[0].charge + sample->spectator_charge[0] +
            (titrant * added_L + (hydrogen - hydroxide) * total_L) / amount;
 }

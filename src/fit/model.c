@@ -135,7 +135,8 @@ void wa_model_titration(const struct wa_experiment *experiment,
         layout->weak = titration->component_count++;
         set_system(&titration->components[layout->weak], experiment->weak_charge,
                    experiment->weak_step_count, experiment->weak_pK);
-        titration->components[layout->weak].titrant_concentration = concentration;
+        titration->components[layout->weak].titrant_concentration =
+            experiment->weak_count * concentration;
     }
 }
 

@@ -15,7 +15,7 @@ static int start_amounts(const struct wa_experiment *experiment, const struct wa
                          int protons, double *amount)
 {
     const double equivalents_per_mL =
-        fabs(experiment->titrant_charge) * exp(experiment->ln_titrant.mean) * 1e-3;
+        experiment->equivalents * exp(experiment->ln_titrant.mean) * 1e-3;
     const double last_mL = experiment->volume_mL[experiment->count - 1];
     int count = 0;
     for (size_t i = 0; i < curve->inflection_count; i++) {
@@ -34,7 +34,7 @@ static enum wa_status fit_generic(const struct wa_experiment *experiment,
                                   struct wa_error *error)
 {
     const int protons =
-        experiment->titrant_charge > 0.0 ? generic->step_count - generic->lost : generic->lost;
+        experiment->titrant_is_base ? generic->step_count - generic->lost : generic->lost;
     double amount[WA_INFLECTIONS_MAX + 2];
     double start[WA_PARAMETERS_MAX], best_start[WA_PARAMETERS_MAX];
     double best = -INFINITY;
@@ -68,7 +68,7 @@ static enum wa_status fit_generic(const struct wa_experiment *experiment,
  * A strong acid's proton is shown though its constant is not. */
 static int shown_protons(const struct wa_experiment *experiment, const struct wa_generic *generic)
 {
-    const bool base = experiment->titrant_charge > 0.0;
+    const bool base = experiment->titrant_is_base;
     double lowest = INFINITY, highest = -INFINITY;
     for (size_t p = 0; p < experiment->count; p++) {
         lowest = fmin(lowest, experiment->reading[p]);
@@ -139,7 +139,7 @@ enum wa_status wa_proton_study_run(const struct wa_experiment *experiment,
                                    const struct wa_curve *curve, struct wa_proton_study *study,
                                    struct wa_error *error)
 {
-    const bool base = experiment->titrant_charge > 0.0;
+    const bool base = experiment->titrant_is_base;
     double best = -INFINITY;
     *study = (struct wa_proton_study){.count = 0};
     for (int protons = 1; protons <= WA_GENERIC_STEPS_MAX; protons++) {

@@ -1,0 +1,78 @@
+/* Matching on the whole curve: the model of every form in the table is fitted to the points, with
+ * its reference constants as priors, and its evidence decides. */
+#ifndef WHICHACID_MATCH_H
+#define WHICHACID_MATCH_H
+
+#include "whichacid/protons.h"
+#include "whichacid/reference.h"
+
+/** Prior weight of "not in the table". */
+#define WA_NOT_IN_TABLE_PRIOR 0.1
+
+/** Molar masses that an unknown may have, g/mol, log-uniform. */
+#define WA_MOLAR_MASS_LOW 40.0
+#define WA_MOLAR_MASS_HIGH 1000.0
+
+/** Purity of a sample: a stated mixture of "reagent grade" and "as found" (ln of the fraction). */
+#define WA_PURITY_REAGENT_SHARE 0.8
+#define WA_PURITY_REAGENT_LN_MEAN (-0.003)
+#define WA_PURITY_REAGENT_LN_U 0.004
+#define WA_PURITY_FOUND_LN_MEAN (-0.06)
+#define WA_PURITY_FOUND_LN_U 0.06
+
+/** The mass that was titrated. */
+struct wa_titrated_mass {
+    bool known;
+    double mass_g; /**< of the part that was titrated: sample mass times aliquot */
+    double u_g;
+};
+
+/** One candidate: forms of one acid system that bring the same ions to the solution and that the
+ * data at hand cannot tell apart by mass either. */
+struct wa_candidate {
+    int acid;   /**< index of the first acid system, -1 for hydroxides alone */
+    int form;   /**< index of the form that stands for them */
+    int *forms; /**< all of them, table indices */
+    size_t form_count;
+    double log_weight; /**< ln of prior times evidence */
+    double probability;
+    double ln_amount; /**< ln of mol of formula units, from the fit */
+    double ln_amount_u;
+    double log_curve;                     /**< ln of the evidence of the curve alone */
+    const struct wa_fit *fit;             /**< owned by the match */
+    const struct wa_sample_model *sample; /**< owned by the match */
+};
+
+/** What may be asked of a match. Zero-initialised means the defaults. */
+struct wa_match_options {
+    const char *const *among; /**< closed set of keys, NULL: the whole table */
+    size_t among_count;
+};
+
+/** The outcome, the most probable candidate first. */
+struct wa_match {
+    struct wa_candidate *candidates;
+    size_t candidate_count;
+    double not_in_table; /**< probability; 0 when the set was closed */
+    size_t forms_considered;
+    size_t models_considered;         /**< distinct sample models among these forms */
+    size_t models_fitted;             /**< of these, fitted fully after screening */
+    struct wa_match_storage *storage; /**< opaque: fits and sample models */
+};
+
+/**
+ * Weigh every form of the table.
+ * @param[in]  study  generic acids of the same experiment; must hold at least one
+ * @param[out] match  to be freed with wa_match_free
+ * @return WA_ERROR_CALL when a key of `among` is unknown
+ */
+enum wa_status wa_match_run(const struct wa_experiment *experiment,
+                            const struct wa_proton_study *study,
+                            const struct wa_titrated_mass *mass, const struct wa_table *table,
+                            const struct wa_match_options *options, struct wa_match *match,
+                            struct wa_error *error) WA_MUST_USE;
+
+/** Free what a match owns. NULL is allowed. */
+void wa_match_free(struct wa_match *match);
+
+#endif

@@ -1,0 +1,308 @@
+/* Screening: at each measured pH the charge balance is explicit, and linear in the amount. One
+ * small linear system a form gives an evidence close enough to tell which forms deserve a full fit.
+ */
+#include "match/match_internal.h"
+
+#include <gsl/gsl_errno.h>
+#include <gsl/gsl_linalg.h>
+
+#include <math.h>
+#include <stdlib.h>
+
+static const double ln10 = 2.302585092994046;
+static const size_t most_points = 96; /* a longer run is thinned evenly: this is a screening */
+static const int rounds = 3;
+static const double model_error = 0.005; /* pH, so that no noiseless run screens too sharply */
+
+/* Unknowns of one form: its amount, the electrode's offset, and its free constants. */
+enum { AMOUNT, OFFSET, CONSTANTS };
+
+#define UNKNOWNS_MAX (CONSTANTS + WA_PARTS_MAX * WA_PROTONS_MAX)
+
+/* One point: everything that does not depend on the form. */
+struct station {
+    double activity;     /* of H+, by the best generic fit's electrode */
+    double gamma;        /* of a singly charged ion */
+    double known;        /* mol of charge of all but the form: titrant, water, carbonate */
+    double known_pH;     /* its derivative by pH */
+    double noise_charge; /* mol, by the noise of the volume */
+    double weight;       /* probability of being no outlier */
+};
+
+struct screening {
+    const struct wa_experiment *experiment;
+    struct station *stations;
+    size_t count;
+    double noise_pH;
+    double slope;       /* of the electrode */
+    double offset_mean; /* prior mean less the offset already used */
+};
+
+/* One form on trial. */
+struct trial {
+    const struct wa_sample_model *sample;
+    struct wa_system systems[WA_PARTS_MAX];
+    int count; /* unknowns */
+    double ln_amount;
+    double value[UNKNOWNS_MAX]; /* deviations from the prior means, in prior u */
+    double matrix[UNKNOWNS_MAX * UNKNOWNS_MAX];
+    double vector[UNKNOWNS_MAX];
+    double square;    /* weighted sum of squared residuals */
+    double log_scale; /* sum of ln (d reading / d charge) / sigma */
+    double weight;    /* sum of the weights */
+};
+
+static double parameter_value(const struct wa_fit *fit, enum wa_parameter_kind kind,
+                              double otherwise)
+{
+    const int index = wa_fit_find(fit, kind, 0, 0);
+    return index >= 0 ? fit->parameters[index].value : otherwise;
+}
+
+/* Mean and variance of the protons lost. */
+static double mean_lost(const double *fraction, int step_count, double *variance)
+{
+    double first = 0.0, second = 0.0;
+    for (int i = 1; i <= step_count; i++) {
+        first += fraction[i] * i;
+        second += fraction[i] * i * i;
+    }
+    *variance = second - first * first;
+    return first;
+}
+
+static void set_station(const struct wa_titration *t, double pH, double gamma, double added_L,
+                        double noise_L, struct station *at)
+{
+    const double total_L = t->solution_volume_L + added_L;
+    double titrant_charge = t->titrant_charge;
+    at->activity = exp(-ln10 * pH);
+    at->gamma = gamma;
+    const double hydrogen = t->medium.density * at->activity / gamma;
+    const double hydroxide = t->medium.density * exp(ln10 * (pH - t->medium.pKw)) / gamma;
+    at->known = (hydrogen - hydroxide) * total_L + t->titrant_charge * added_L;
+    at->known_pH = -ln10 * (hydrogen + hydroxide) * total_L;
+    /* The first component is the generic acid that the form now stands in for. */
+    for (int k = 1; k < t->component_count; k++) {
+        const struct wa_titration_component *component = &t->components[k];
+        double fraction[WA_PROTONS_MAX + 1], variance;
+        wa_system_fractions(&component->system, at->activity, gamma, fraction);
+        const double charge =
+            component->system.charge - mean_lost(fraction, component->system.step_count, &variance);
+        const double moles = component->sample_moles + component->titrant_concentration * added_L;
+        at->known += moles * charge;
+        at->known_pH -= ln10 * moles * variance;
+        titrant_charge += component->titrant_concentration * charge;
+    }
+    at->noise_charge = fabs(titrant_charge) * noise_L;
+}
+
+static enum wa_status prepare(const struct wa_experiment *experiment, const struct wa_fit *best,
+                              struct screening *screening, struct wa_error *error)
+{
+    const struct wa_titration *t = &best->titration;
+    const size_t stride = (experiment->count + most_points - 1) / most_points;
+    const double offset = parameter_value(best, WA_PARAMETER_OFFSET, experiment->offset.mean);
+    screening->experiment = experiment;
+    screening->count = 0;
+    screening->noise_pH = hypot(best->noise_reading, model_error);
+    screening->slope = parameter_value(best, WA_PARAMETER_SLOPE, experiment->slope.mean);
+    screening->offset_mean = experiment->offset.mean - offset;
+    screening->stations = calloc(experiment->count / stride + 1, sizeof *screening->stations);
+    if (screening->stations == NULL) {
+        return wa_fail_memory(error);
+    }
+    const double gamma =
+        exp(ln10 * wa_davies_log10_gamma(best->ionic_strength, t->medium.debye_huckel_A,
+                                         t->davies_coefficient));
+    for (size_t p = 0; p < experiment->count; p += stride) {
+        struct station *at = &screening->stations[screening->count++];
+        const double pH = 7.0 + (experiment->reading[p] - 7.0 - offset) / screening->slope;
+        set_station(t, pH, gamma, 1e-3 * experiment->volume_mL[p], 1e-3 * best->noise_volume, at);
+        at->weight = 1.0 - best->outlier[p];
+    }
+    return WA_OK;
+}
+
+static void set_systems(struct trial *trial)
+{
+    int unknown = CONSTANTS;
+    for (int k = 0; k < trial->sample->part_count; k++) {
+        const struct wa_model_part *part = &trial->sample->parts[k];
+        double pK[WA_PROTONS_MAX];
+        for (int i = 0; i < part->step_count; i++) {
+            pK[i] = part->pK[i];
+            if (part->pK_u[i] > 0.0) {
+                pK[i] += trial->value[unknown++] * part->pK_u[i];
+            }
+        }
+        wa_system_set(&trial->systems[k], part->charge, part->step_count, pK);
+    }
+    trial->count = unknown;
+}
+
+/* Charge of one mole of the form at a station, with its derivatives by pH and by each constant (in
+ * prior u). */
+static double form_charge(const struct trial *trial, const struct station *at, double *by_pH,
+                          double *by_constant)
+{
+    double charge = trial->sample->spectator_charge[0];
+    int unknown = 0;
+    *by_pH = 0.0;
+    for (int k = 0; k < trial->sample->part_count; k++) {
+        const struct wa_model_part *part = &trial->sample->parts[k];
+        double fraction[WA_PROTONS_MAX + 1], variance;
+        double past = 1.0, past_lost;
+        wa_system_fractions(&trial->systems[k], at->activity, at->gamma, fraction);
+        const double lost = mean_lost(fraction, part->step_count, &variance);
+        charge += part->count * (part->charge - lost);
+        *by_pH -= ln10 * part->count * variance;
+        past_lost = lost;
+        for (int i = 0; i < part->step_count; i++) {
+            /* Raising pK lowers the weight of every species past this step alike. */
+            past -= fraction[i];
+            past_lost -= fraction[i] * i;
+            if (part->pK_u[i] > 0.0) {
+                by_constant[unknown++] =
+                    ln10 * part->count * (past_lost - past * lost) * part->pK_u[i];
+            }
+        }
+    }
+    return charge;
+}
+
+/* Amount by least squares with the constants as they stand; false when no positive one fits. */
+static bool first_amount(const struct screening *screening, struct trial *trial)
+{
+    double cross = 0.0, square = 0.0;
+    for (size_t p = 0; p < screening->count; p++) {
+        const struct station *at = &screening->stations[p];
+        double by_pH, by_constant[UNKNOWNS_MAX];
+        const double charge = form_charge(trial, at, &by_pH, by_constant);
+        const double noise = hypot(at->noise_charge, at->known_pH * 0.05);
+        const double weight = at->weight / (noise * noise + 1e-300);
+        cross -= weight * charge * at->known;
+        square += weight * charge * charge;
+    }
+    if (!(cross > 0.0) || !(square > 0.0)) {
+        return false;
+    }
+    trial->ln_amount = log(cross / square);
+    return isfinite(trial->ln_amount);
+}
+
+static void add_station(const struct screening *screening, const struct station *at,
+                        struct trial *trial)
+{
+    double by_pH, row[UNKNOWNS_MAX];
+    const double amount = exp(trial->ln_amount);
+    const double charge = form_charge(trial, at, &by_pH, &row[CONSTANTS]);
+    const double total_pH = amount * by_pH + at->known_pH;
+    const double u_offset = screening->experiment->offset.u;
+    row[AMOUNT] = amount * charge;
+    row[OFFSET] = -total_pH / screening->slope * u_offset;
+    for (int i = CONSTANTS; i < trial->count; i++) {
+        row[i] *= amount;
+    }
+    /* The offset acts linearly, the constants and the amount are in the charge already. */
+    const double residual =
+        amount * charge + at->known +
+        row[OFFSET] * (trial->value[OFFSET] + screening->offset_mean / u_offset);
+    const double sigma = hypot(total_pH * screening->noise_pH, at->noise_charge);
+    const double weight = at->weight / (sigma * sigma);
+    trial->square += weight * residual * residual;
+    trial->log_scale += at->weight * log(fabs(total_pH) / sigma);
+    trial->weight += at->weight;
+    for (int i = 0; i < trial->count; i++) {
+        trial->vector[i] -= weight * row[i] * residual;
+        for (int j = 0; j <= i; j++) {
+            trial->matrix[i * trial->count + j] += weight * row[i] * row[j];
+        }
+    }
+}
+
+/* Normal equations with the priors: a broad one for the amount, one u for each other unknown. */
+static void linearise(const struct screening *screening, struct trial *trial)
+{
+    const struct wa_prior *ln_amount = &trial->sample->ln_amount[0];
+    set_systems(trial);
+    for (int i = 0; i < trial->count * trial->count; i++) {
+        trial->matrix[i] = 0.0;
+    }
+    const double precision = 1.0 / (ln_amount->u * ln_amount->u);
+    trial->vector[AMOUNT] = (ln_amount->mean - trial->ln_amount) * precision;
+    trial->matrix[AMOUNT * trial->count + AMOUNT] = precision;
+    for (int i = OFFSET; i < trial->count; i++) {
+        trial->vector[i] = -trial->value[i];
+        trial->matrix[i * trial->count + i] = 1.0;
+    }
+    trial->square = 0.0;
+    trial->log_scale = 0.0;
+    trial->weight = 0.0;
+    for (size_t p = 0; p < screening->count; p++) {
+        add_station(screening, &screening->stations[p], trial);
+    }
+}
+
+/* Solve for the step and take it; returns ln of the determinant, or NaN. */
+static double step(struct trial *trial)
+{
+    const size_t count = (size_t)trial->count;
+    gsl_matrix_view matrix = gsl_matrix_view_array(trial->matrix, count, count);
+    gsl_vector_view vector = gsl_vector_view_array(trial->vector, count);
+    if (gsl_linalg_cholesky_decomp1(&matrix.matrix) != GSL_SUCCESS ||
+        gsl_linalg_cholesky_svx(&matrix.matrix, &vector.vector) != GSL_SUCCESS) {
+        return NAN;
+    }
+    double log_determinant = 0.0;
+    for (size_t i = 0; i < count; i++) {
+        log_determinant += 2.0 * log(trial->matrix[i * count + i]);
+    }
+    trial->ln_amount += fmin(fmax(trial->vector[AMOUNT], -1.0), 1.0);
+    for (int i = OFFSET; i < trial->count; i++) {
+        trial->value[i] += trial->vector[i];
+    }
+    return log_determinant;
+}
+
+static double screen_group(const struct screening *screening, struct wa_group *group)
+{
+    struct trial trial = {.sample = &group->sample};
+    double log_determinant = NAN;
+    set_systems(&trial);
+    if (!first_amount(screening, &trial)) {
+        return -INFINITY;
+    }
+    for (int round = 0; round < rounds; round++) {
+        linearise(screening, &trial);
+        log_determinant = step(&trial);
+        if (!isfinite(log_determinant)) {
+            return -INFINITY;
+        }
+    }
+    linearise(screening, &trial);
+    /* A full fit would raise the noise to meet a misfit; this is what that costs. */
+    const double excess = trial.square / trial.weight;
+    double sum = trial.log_scale - 0.5 * trial.weight * (excess > 1.0 ? 1.0 + log(excess) : excess);
+    for (int i = OFFSET; i < trial.count; i++) {
+        sum -= 0.5 * trial.value[i] * trial.value[i];
+    }
+    group->ln_amount = trial.ln_amount;
+    sum -= 0.5 * log_determinant;
+    return isfinite(sum) ? sum : -INFINITY;
+}
+
+enum wa_status wa_groups_screen(const struct wa_experiment *experiment, const struct wa_fit *best,
+                                struct wa_group_list *list, struct wa_error *error)
+{
+    struct screening screening;
+    const enum wa_status status = prepare(experiment, best, &screening, error);
+    if (status != WA_OK) {
+        return status;
+    }
+    for (size_t g = 0; g < list->count; g++) {
+        list->groups[g].screened = screen_group(&screening, &list->groups[g]);
+    }
+    free(screening.stations);
+    return WA_OK;
+}
