@@ -1,0 +1,192 @@
+/* The candidates that are listed, each with what a chemist can check. */
+#include "identify/identify_internal.h"
+
+#include "base/text.h"
+
+#include <math.h>
+#include <stdlib.h>
+#include <string.h>
+
+static const double least_listed = 1e-3; /* probability below which only the first few are listed */
+static const size_t listed_at_least = 5;
+
+static bool has_source(const struct wa_text *list, const char *source)
+{
+    return list->bytes != NULL && strstr(list->bytes, source) != NULL;
+}
+
+static void list_sources(const struct wa_table *table, int acid, struct wa_text *sources)
+{
+    for (size_t c = 0; c < table->constant_count; c++) {
+        const struct wa_constant_row *row = &table->constants[c];
+        if (row->acid == acid && !has_source(sources, row->source)) {
+            wa_text_append(sources, "%s%s", sources->length > 0 ? "; " : "", row->source);
+        }
+    }
+}
+
+static void list_others(const struct wa_table *table, const struct wa_candidate *candidate,
+                        struct wa_text *others)
+{
+    for (size_t i = 1; i < candidate->form_count; i++) {
+        wa_text_append(others, "%s%s", others->length > 0 ? "; " : "",
+                       table->forms[candidate->forms[i]].name);
+    }
+}
+
+/* Measured molar mass less the form's, in combined uncertainties. */
+static double mass_deviation(const struct wa_titrated_mass *mass,
+                             const struct wa_candidate *candidate, double molar_mass)
+{
+    if (!mass->known) {
+        return NAN;
+    }
+    const double measured = log(mass->mass_g) - candidate->ln_amount;
+    const double u = hypot(hypot(candidate->ln_amount_u, mass->u_g / mass->mass_g), 0.004);
+    return (measured - log(molar_mass)) / u;
+}
+
+static bool within_window(const struct wa_experiment *experiment, double pKa)
+{
+    double lowest = INFINITY, highest = -INFINITY;
+    for (size_t p = 0; p < experiment->count; p++) {
+        lowest = fmin(lowest, experiment->reading[p]);
+        highest = fmax(highest, experiment->reading[p]);
+    }
+    return pKa > lowest - 1.0 && pKa < highest + 0.3;
+}
+
+/* How far the curve pulls a constant from its reference value: the difference over the square root
+ * of the variance that the data took away from the prior. */
+static double pull(const struct wa_parameter *parameter)
+{
+    const double gained = parameter->prior.u * parameter->prior.u - parameter->u * parameter->u;
+    const double informative = 0.02 * parameter->prior.u * parameter->prior.u;
+    return gained > informative ? (parameter->value - parameter->prior.mean) / sqrt(gained) : NAN;
+}
+
+static void fill_constants(const struct wa_table *table, const struct wa_candidate *candidate,
+                           const struct wa_experiment *experiment,
+                           struct wa_result_candidate *listed)
+{
+    const struct wa_acid *acid = &table->acids[candidate->acid];
+    int part = 0;
+    while (part < candidate->sample->part_count &&
+           candidate->sample->parts[part].step_count != acid->step_count) {
+        part++;
+    }
+    listed->step_count = acid->step_count;
+    for (int i = 0; i < acid->step_count; i++) {
+        const int index = wa_fit_find(candidate->fit, WA_PARAMETER_PK, part, i);
+        listed->pKa[i] = acid->steps[i].pKa;
+        listed->pKa_u[i] = acid->steps[i].u;
+        listed->seen[i] = within_window(experiment, acid->steps[i].pKa);
+        listed->pKa_deviation[i] =
+            index >= 0 && listed->seen[i] ? pull(&candidate->fit->parameters[index]) : NAN;
+    }
+}
+
+/* One line that a chemist can check. */
+static char *reasons(const struct wa_result_candidate *listed, const struct wa_candidate *candidate)
+{
+    struct wa_text text = {.bytes = NULL};
+    int seen = 0;
+    double worst = 0.0;
+    int worst_step = 0;
+    for (int i = 0; i < listed->step_count; i++) {
+        if (listed->seen[i] && isfinite(listed->pKa_deviation[i])) {
+            seen++;
+            if (fabs(listed->pKa_deviation[i]) > fabs(worst)) {
+                worst = listed->pKa_deviation[i];
+                worst_step = i + 1;
+            }
+        }
+    }
+    if (seen == 0) {
+        wa_text_append(&text, "the curve says nothing about its constants");
+    } else if (fabs(worst) < 2.0) {
+        wa_text_append(&text, "%s", seen == 1 ? "its constant fits" : "its constants fit");
+    } else {
+        wa_text_append(&text, "pKa%d misses by %+.1f u", worst_step, worst);
+    }
+    if (isfinite(listed->molar_mass_deviation)) {
+        wa_text_append(&text, "; molar mass %s by %+.1f u",
+                       fabs(listed->molar_mass_deviation) < 2.0 ? "fits" : "misses",
+                       listed->molar_mass_deviation);
+    }
+    if (candidate->fit->misfit > 1.3) {
+        wa_text_append(&text, "; the curve scatters about it %.1f times its noise",
+                       candidate->fit->misfit);
+    }
+    return text.failed ? NULL : text.bytes;
+}
+
+static char *copy_text(const char *text)
+{
+    return wa_text_copy(text, strlen(text));
+}
+
+/* Take the text over; an empty one becomes "". */
+static char *take(struct wa_text *text)
+{
+    if (text->failed) {
+        wa_text_free(text);
+        return NULL;
+    }
+    return text->bytes != NULL ? text->bytes : copy_text("");
+}
+
+static enum wa_status list_candidate(const struct wa_identification *work,
+                                     const struct wa_candidate *candidate, struct wa_result *result,
+                                     struct wa_error *error)
+{
+    const struct wa_table *table = work->table;
+    const struct wa_form *form = &table->forms[candidate->form];
+    struct wa_result_candidate *listed = &result->candidates[result->candidate_count];
+    struct wa_text sources = {.bytes = NULL}, others = {.bytes = NULL};
+    *listed = (struct wa_result_candidate){
+        .rank = (int)result->candidate_count + 1,
+        .acid = candidate->acid,
+        .form = candidate->form,
+        .probability = candidate->probability,
+        .misfit = candidate->fit->misfit,
+        .molar_mass = form->molar_mass,
+        .molar_mass_deviation = mass_deviation(&work->mass, candidate, form->molar_mass),
+    };
+    result->candidate_count++;
+    if (candidate->acid >= 0) {
+        fill_constants(table, candidate, &result->experiments[0], listed);
+        list_sources(table, candidate->acid, &sources);
+    }
+    list_others(table, candidate, &others);
+    listed->acid_name =
+        copy_text(candidate->acid >= 0 ? table->acids[candidate->acid].name : form->name);
+    listed->form_name = copy_text(form->name);
+    listed->key = copy_text(form->key);
+    listed->others = take(&others);
+    listed->sources = take(&sources);
+    listed->why = reasons(listed, candidate);
+    return listed->acid_name != NULL && listed->form_name != NULL && listed->key != NULL &&
+                   listed->others != NULL && listed->sources != NULL && listed->why != NULL
+               ? WA_OK
+               : wa_fail_memory(error);
+}
+
+enum wa_status wa_fill_candidates(const struct wa_identification *work, struct wa_result *result,
+                                  struct wa_error *error)
+{
+    enum wa_status status = WA_OK;
+    result->not_in_table = work->match.not_in_table;
+    result->forms_considered = work->match.forms_considered;
+    result->forms_fitted = work->match.models_fitted;
+    for (size_t i = 0; status == WA_OK && i < work->match.candidate_count &&
+                       result->candidate_count < WA_CANDIDATES_MAX;
+         i++) {
+        const struct wa_candidate *candidate = &work->match.candidates[i];
+        if (i >= listed_at_least && candidate->probability < least_listed) {
+            break;
+        }
+        status = list_candidate(work, candidate, result, error);
+    }
+    return status;
+}

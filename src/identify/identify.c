@@ -1,0 +1,167 @@
+/* The pipeline: run, curve, fit, match, verdict. */
+#include "identify/identify_internal.h"
+
+#include "identify/cautions.h"
+
+#include <math.h>
+#include <stdio.h>
+#include <stdlib.h>
+#include <string.h>
+
+static const double default_threshold = 0.95;
+static const double default_amount_limit = 0.05;
+static const double default_pKa_limit = 0.5;
+static const double default_mass_u = 0.0003;   /* g; a balance that reads to 0.1 mg, twice */
+static const double default_density_u = 0.002; /* relative */
+static const double default_sample_volume_u = 0.003;
+
+struct wa_titrated_mass wa_titrated_mass_of(const struct wa_conditions *conditions)
+{
+    struct wa_titrated_mass mass = {.known = false};
+    const struct wa_quantity *m = &conditions->sample_mass.quantity;
+    const struct wa_quantity *v = &conditions->sample_volume.quantity;
+    const struct wa_quantity *d = &conditions->sample_density.quantity;
+    if (conditions->sample_mass.known && m->value > 0.0) {
+        mass = (struct wa_titrated_mass){
+            .known = true, .mass_g = m->value, .u_g = m->has_u ? m->u : default_mass_u};
+    } else if (conditions->sample_volume.known && conditions->sample_density.known &&
+               v->value > 0.0 && d->value > 0.0) {
+        const double u_volume = v->has_u ? v->u / v->value : default_sample_volume_u;
+        const double u_density = d->has_u ? d->u / d->value : default_density_u;
+        mass.known = true;
+        mass.mass_g = v->value * d->value;
+        mass.u_g = mass.mass_g * hypot(u_volume, u_density);
+    }
+    if (mass.known && conditions->aliquot.known && conditions->aliquot.quantity.value > 0.0) {
+        const struct wa_quantity *part = &conditions->aliquot.quantity;
+        const double u_part = part->has_u ? part->u / part->value : 0.0;
+        mass.u_g = part->value * hypot(mass.u_g, mass.mass_g * u_part);
+        mass.mass_g *= part->value;
+    }
+    return mass;
+}
+
+static const struct wa_titrant *titrant_of(const struct wa_table *table, const struct wa_run *run)
+{
+    const char *words = run->conditions.titrant;
+    const int index = words != NULL ? wa_table_find_titrant(table, words) : -1;
+    return index >= 0 ? &table->titrants[index] : NULL;
+}
+
+/* Curve and experiment of every run. */
+static enum wa_status collect(const struct wa_identification *work, struct wa_result *result,
+                              struct wa_error *error)
+{
+    const size_t count = result->runs.count;
+    result->curves = calloc(count, sizeof *result->curves);
+    result->experiments = calloc(count, sizeof *result->experiments);
+    if (result->curves == NULL || result->experiments == NULL) {
+        return wa_fail_memory(error);
+    }
+    for (size_t r = 0; r < count; r++) {
+        const struct wa_run *run = &result->runs.runs[r];
+        enum wa_status status = wa_curve_analyse(run, &result->curves[r], error);
+        if (status == WA_OK) {
+            status =
+                wa_experiment_collect(run, &result->curves[r], work->table,
+                                      titrant_of(work->table, run), &result->experiments[r], error);
+        }
+        if (status != WA_OK) {
+            return status;
+        }
+    }
+    return WA_OK;
+}
+
+/* Shares of the candidates by the charge of their acid: the activity correction of a constant
+ * depends on it, and the curve alone hardly tells. */
+static void weigh_charges(struct wa_identification *work)
+{
+    work->charge_weight[0] = work->charge_weight[1] = 0.0;
+    for (size_t i = 0; i < work->match.candidate_count; i++) {
+        const struct wa_candidate *candidate = &work->match.candidates[i];
+        if (candidate->sample->part_count > 0) {
+            const int charged = candidate->sample->parts[0].charge > 0 ? 1 : 0;
+            work->charge_weight[charged] += candidate->probability;
+        }
+    }
+}
+
+static enum wa_status compute(struct wa_identification *work, struct wa_result *result,
+                              struct wa_error *error)
+{
+    const struct wa_match_options options = {.among = work->options->among,
+                                             .among_count = work->options->among_count};
+    const struct wa_experiment *experiment = &result->experiments[0];
+    work->mass = wa_titrated_mass_of(&result->runs.runs[0].conditions);
+    enum wa_status status =
+        wa_proton_study_run(experiment, &result->curves[0], &work->study, error);
+    if (status == WA_OK && work->study.count > 0) {
+        status = wa_match_run(experiment, &work->study, &work->mass, work->table, &options,
+                              &work->match, error);
+        work->matched = status == WA_OK;
+        weigh_charges(work);
+    }
+    return status;
+}
+
+static enum wa_status fill(struct wa_identification *work, struct wa_result *result,
+                           struct wa_error *error)
+{
+    enum wa_status (*const steps[])(const struct wa_identification *, struct wa_result *,
+                                    struct wa_error *) = {
+        wa_fill_protons,  wa_fill_equivalence, wa_fill_candidates,
+        wa_fill_findings, wa_fill_verdict,     wa_fill_next_tests,
+    };
+    enum wa_status status = WA_OK;
+    for (size_t i = 0; status == WA_OK && i < sizeof steps / sizeof steps[0]; i++) {
+        status = steps[i](work, result, error);
+    }
+    if (status == WA_OK) {
+        status = wa_fill_parameters(result, error);
+    }
+    return status == WA_OK ? wa_identify_cautions(work->table, result, error) : status;
+}
+
+/* Hand the best generic fit over to the result. */
+static void take_best(struct wa_identification *work, struct wa_result *result)
+{
+    if (work->study.count > 0) {
+        result->best = work->study.generic[0].fit;
+        result->fitted = true;
+        work->study.generic[0].fit = (struct wa_fit){.parameter_count = 0};
+    }
+}
+
+enum wa_status wa_identify(struct wa_run_list *runs, const struct wa_table *table,
+                           const struct wa_identify_options *options, struct wa_result *result,
+                           struct wa_error *error)
+{
+    static const struct wa_identify_options defaults = {.threshold = 0.0};
+    struct wa_identification work = {.table = table,
+                                     .options = options != NULL ? options : &defaults};
+    work.threshold = work.options->threshold > 0.0 ? work.options->threshold : default_threshold;
+    work.amount_limit =
+        work.options->amount_limit > 0.0 ? work.options->amount_limit : default_amount_limit;
+    work.pKa_limit = work.options->pKa_limit > 0.0 ? work.options->pKa_limit : default_pKa_limit;
+    *result = (struct wa_result){.runs = *runs};
+    *runs = (struct wa_run_list){.count = 0};
+    snprintf(result->table_version, sizeof result->table_version, "%s", table->version);
+    result->overlaid_count = table->overlaid_count;
+    enum wa_status status = result->runs.count > 0 ? collect(&work, result, error)
+                                                   : wa_fail(error, WA_ERROR_CALL, NULL, 0,
+                                                             "There is no run to identify.");
+    if (status == WA_OK) {
+        status = compute(&work, result, error);
+    }
+    if (status == WA_OK) {
+        status = fill(&work, result, error);
+    }
+    take_best(&work, result);
+    wa_match_free(&work.match);
+    wa_proton_study_free(&work.study);
+    if (status != WA_OK) {
+        wa_result_free(result);
+    }
+    return status;
+}

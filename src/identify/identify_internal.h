@@ -1,0 +1,60 @@
+/* Steps of the pipeline, in the order in which a result is filled. */
+#ifndef WHICHACID_IDENTIFY_INTERNAL_H
+#define WHICHACID_IDENTIFY_INTERNAL_H
+
+#include "whichacid/identify.h"
+#include "whichacid/match.h"
+#include "whichacid/protons.h"
+
+/** What the steps hand to one another. */
+struct wa_identification {
+    const struct wa_table *table;
+    const struct wa_identify_options *options;
+    double threshold;
+    double amount_limit;
+    double pKa_limit;
+    struct wa_titrated_mass mass;
+    struct wa_proton_study study; /**< of the first run */
+    struct wa_match match;
+    bool matched;
+    double charge_weight[2]; /**< share of candidates whose acid is uncharged, charged */
+};
+
+/** A malloc'd sentence; NULL when memory is out. */
+char *wa_sentence(const char *format, ...) WA_PRINTF(1, 2);
+
+/** Append to one of the result's sentence lists. The sentence is taken over, also on failure. */
+enum wa_status wa_add_sentence(struct wa_result_sentence **list, size_t *count, const char *code,
+                               char *sentence, struct wa_error *error) WA_MUST_USE;
+
+/** The mass that was titrated, from the notes. */
+struct wa_titrated_mass wa_titrated_mass_of(const struct wa_conditions *conditions);
+
+/** Equivalence points: by the curve, by the fit, and which of them an inflection shows. */
+enum wa_status wa_fill_equivalence(const struct wa_identification *work, struct wa_result *result,
+                                   struct wa_error *error) WA_MUST_USE;
+
+/** Proton counts, constants, amount and molar mass. */
+enum wa_status wa_fill_protons(const struct wa_identification *work, struct wa_result *result,
+                               struct wa_error *error) WA_MUST_USE;
+
+/** The candidates listed, each with its reasons. */
+enum wa_status wa_fill_candidates(const struct wa_identification *work, struct wa_result *result,
+                                  struct wa_error *error) WA_MUST_USE;
+
+/** Parameters of the best fit, for the report. */
+enum wa_status wa_fill_parameters(struct wa_result *result, struct wa_error *error) WA_MUST_USE;
+
+/** The verdict, and why data are unfit when they are. */
+enum wa_status wa_fill_verdict(const struct wa_identification *work, struct wa_result *result,
+                               struct wa_error *error) WA_MUST_USE;
+
+/** What to do next. */
+enum wa_status wa_fill_next_tests(const struct wa_identification *work, struct wa_result *result,
+                                  struct wa_error *error) WA_MUST_USE;
+
+/** Assumptions and findings beside the answer. */
+enum wa_status wa_fill_findings(const struct wa_identification *work, struct wa_result *result,
+                                struct wa_error *error) WA_MUST_USE;
+
+#endif

@@ -1,0 +1,193 @@
+/* The verdict, with the reasons when the data cannot support an answer. */
+#include "identify/identify_internal.h"
+
+#include "base/text.h"
+
+#include <math.h>
+#include <stdlib.h>
+#include <string.h>
+
+static const double usable_noise = 0.25; /* pH; beyond it no model describes the readings */
+static const size_t named_at_most = 4;   /* forms spelled out in the sentence */
+
+/* Why the data are unfit, appended as half sentences; nothing when they are fit. */
+static void unfit_reasons(const struct wa_identification *work, const struct wa_result *result,
+                          struct wa_text *reasons)
+{
+    const struct wa_curve *curve = &result->curves[0];
+    const struct wa_experiment *experiment = &result->experiments[0];
+    if (work->study.count == 0) {
+        wa_text_append(reasons, "no acid-base model can be fitted to these points");
+        return;
+    }
+    const struct wa_fit *fit = &work->study.generic[0].fit;
+    const int amount = wa_fit_find(fit, WA_PARAMETER_LN_AMOUNT, 0, 0);
+    const double u = fit->parameters[amount].u;
+    if (fit->noise_reading > usable_noise) {
+        wa_text_append(reasons,
+                       "the readings scatter by %.2f pH about the best model, so that this is "
+                       "perhaps no acid-base titration or the columns were misread",
+                       fit->noise_reading);
+    } else if (u > work->amount_limit) {
+        wa_text_append(reasons, "the amount of acid is only known to %.0f %%", 100.0 * u);
+        const double last = experiment->volume_mL[experiment->count - 1];
+        const double end = 1e3 * work->study.generic[0].shown *
+                           exp(fit->parameters[amount].value - experiment->ln_titrant.mean) /
+                           experiment->equivalents;
+        if (experiment->ln_titrant.u > 2.0 * work->amount_limit) {
+            wa_text_append(reasons, ", because the titrant concentration was not noted");
+        } else if (curve->inflection_count == 0 && end > last) {
+            wa_text_append(reasons, ": the titration stops before the first equivalence point");
+        } else if (curve->inflection_count == 0) {
+            wa_text_append(reasons, ": the curve shows no jump, the reaction is not complete "
+                                    "enough at this dilution");
+        } else {
+            wa_text_append(reasons, ": too few points, or too much scatter, about the jump");
+        }
+    }
+}
+
+static char *unfit_sentence(const struct wa_identification *work, const struct wa_result *result)
+{
+    struct wa_text reasons = {.bytes = NULL};
+    char *sentence = NULL;
+    unfit_reasons(work, result, &reasons);
+    if (!reasons.failed && reasons.length > 0) {
+        sentence = wa_sentence("The data cannot support an answer: %s.", reasons.bytes);
+    }
+    const bool failed = reasons.failed;
+    wa_text_free(&reasons);
+    return failed ? NULL : sentence;
+}
+
+static bool is_unfit(const struct wa_identification *work, const struct wa_result *result)
+{
+    struct wa_text reasons = {.bytes = NULL};
+    unfit_reasons(work, result, &reasons);
+    const bool unfit = reasons.length > 0;
+    wa_text_free(&reasons);
+    return unfit;
+}
+
+/* How a candidate is called: with the forms that cannot be told from it. */
+static void append_name(const struct wa_identification *work, const struct wa_candidate *candidate,
+                        struct wa_text *text)
+{
+    const struct wa_form *form = &work->table->forms[candidate->form];
+    if (!work->mass.known && candidate->form_count > 1 && candidate->acid >= 0) {
+        wa_text_append(text, "%s (in one of %zu forms)", work->table->acids[candidate->acid].name,
+                       candidate->form_count);
+        return;
+    }
+    wa_text_append(text, "%s", form->name);
+    if (candidate->form_count > 1) {
+        wa_text_append(text, " (or %s", work->table->forms[candidate->forms[1]].name);
+        if (candidate->form_count > 2) {
+            wa_text_append(text, " and %zu more that weigh the same", candidate->form_count - 2);
+        }
+        wa_text_append(text, ")");
+    }
+}
+
+/* Keys of the first `count` candidates. */
+static char *keys_of(const struct wa_identification *work, size_t count)
+{
+    struct wa_text text = {.bytes = NULL};
+    for (size_t i = 0; i < count; i++) {
+        const struct wa_candidate *candidate = &work->match.candidates[i];
+        for (size_t f = 0; f < candidate->form_count; f++) {
+            wa_text_append(&text, "%s%s", text.length > 0 ? "; " : "",
+                           work->table->forms[candidate->forms[f]].key);
+        }
+    }
+    if (text.failed) {
+        wa_text_free(&text);
+        return NULL;
+    }
+    return text.bytes != NULL ? text.bytes : wa_text_copy("", 0);
+}
+
+static char *identified_sentence(const struct wa_identification *work)
+{
+    struct wa_text text = {.bytes = NULL};
+    const struct wa_candidate *first = &work->match.candidates[0];
+    wa_text_append(&text, "The curve is that of ");
+    append_name(work, first, &text);
+    wa_text_append(&text, ", with a probability of %.1f %% among the substances considered.",
+                   fmin(100.0 * first->probability, 99.9));
+    return text.failed ? NULL : text.bytes;
+}
+
+static char *narrowed_sentence(const struct wa_identification *work, size_t count, double share,
+                               double threshold)
+{
+    struct wa_text text = {.bytes = NULL};
+    wa_text_append(&text, "The data cannot tell these apart: ");
+    for (size_t i = 0; i < count && i < named_at_most; i++) {
+        wa_text_append(&text, "%s", i == 0 ? "" : i + 1 == count ? " and " : ", ");
+        append_name(work, &work->match.candidates[i], &text);
+    }
+    if (count > named_at_most) {
+        wa_text_append(&text, " and %zu more", count - named_at_most);
+    }
+    wa_text_append(&text, "; together they hold %.0f %%", 100.0 * share);
+    if (work->match.not_in_table > 1.0 - threshold) {
+        wa_text_append(&text, ", and %.0f %% stays with a substance that is not in the table",
+                       100.0 * work->match.not_in_table);
+    }
+    wa_text_append(&text, ".");
+    return text.failed ? NULL : text.bytes;
+}
+
+static char *not_in_table_sentence(const struct wa_identification *work)
+{
+    return wa_sentence("No substance in the table explains these data well: with a probability of "
+                       "%.0f %% it is one that is not in the table.",
+                       100.0 * work->match.not_in_table);
+}
+
+/* Smallest set of candidates that holds the threshold, or as much as there is beside "not in the
+ * table". */
+static size_t smallest_set(const struct wa_match *match, double threshold, double *share)
+{
+    size_t count = 0;
+    *share = 0.0;
+    while (count < match->candidate_count && *share < threshold * (1.0 - match->not_in_table) &&
+           match->candidates[count].probability > 1e-6) {
+        *share += match->candidates[count++].probability;
+    }
+    return count;
+}
+
+enum wa_status wa_fill_verdict(const struct wa_identification *work, struct wa_result *result,
+                               struct wa_error *error)
+{
+    const struct wa_match *match = &work->match;
+    struct wa_verdict *verdict = &result->verdict;
+    double share;
+    const size_t count = smallest_set(match, work->threshold, &share);
+    verdict->threshold = work->threshold;
+    if (is_unfit(work, result)) {
+        verdict->kind = WA_VERDICT_UNFIT;
+        verdict->sentence = unfit_sentence(work, result);
+        verdict->forms = wa_text_copy("", 0);
+    } else if (count == 0 || match->not_in_table > 0.5) {
+        verdict->kind = WA_VERDICT_NOT_IN_TABLE;
+        verdict->probability = match->not_in_table;
+        verdict->sentence = not_in_table_sentence(work);
+        verdict->forms = wa_text_copy("", 0);
+    } else if (match->candidates[0].probability >= work->threshold) {
+        verdict->kind = WA_VERDICT_IDENTIFIED;
+        verdict->probability = match->candidates[0].probability;
+        verdict->form_count = 1;
+        verdict->forms = keys_of(work, 1);
+        verdict->sentence = identified_sentence(work);
+    } else {
+        verdict->kind = WA_VERDICT_NARROWED;
+        verdict->probability = share;
+        verdict->form_count = count;
+        verdict->forms = keys_of(work, count);
+        verdict->sentence = narrowed_sentence(work, count, share, work->threshold);
+    }
+    return verdict->sentence != NULL && verdict->forms != NULL ? WA_OK : wa_fail_memory(error);
+}
