@@ -1,3 +1,4 @@
+# shellcheck shell=bash
 # Sourced by demo/run and tests/run: installing what is missing and building into build/.
 # The caller sets `top`, the project's folder.
 
