@@ -23,7 +23,7 @@ static const double default_ln_reading_noise_u = 0.9;
 static const double default_ln_volume_noise_u = 0.7;
 static const double noted_ln_noise_u = 0.25;
 static const double uncalibrated_offset_u = 1.0; /* pH */
-static const double carbonate_ln_u = 1.0;
+static const double carbonate_ln_u = 0.8;        /* root mean square about twice the median */
 
 static struct wa_prior prior_from(const struct wa_noted *noted, double mean, double u)
 {

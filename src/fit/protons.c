@@ -8,7 +8,6 @@ static const double prior_by_steps[WA_GENERIC_STEPS_MAX] = {0.50, 0.28, 0.13, 0.
 static const double prior_already_lost = 0.25;
 static const int trial_iterations = 3;
 static const double hopeless = 12.0; /* ln of the evidence ratio at which more protons are vain */
-static const double unseen_u = 0.5;
 
 /* Amounts worth starting from: the last jump ends the protons, or the titration stops before. */
 static int start_amounts(const struct wa_experiment *experiment, const struct wa_curve *curve,
@@ -81,7 +80,7 @@ static int shown_protons(const struct wa_experiment *experiment, const struct wa
         const int index = wa_fit_find(&generic->fit, WA_PARAMETER_PK, 0, step);
         const struct wa_parameter *pK = &generic->fit.parameters[index];
         const bool beyond = base ? pK->value > highest : pK->value < lowest;
-        shown += !beyond || pK->u < 0.25 * unseen_u ? 1 : 0;
+        shown += beyond ? 0 : 1;
     }
     return shown;
 }

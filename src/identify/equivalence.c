@@ -7,23 +7,25 @@
 /* A fit whose readings scatter more than this says nothing about volumes, in pH. */
 static const double usable_noise = 0.25;
 
-static double parameter_u(const struct wa_fit *fit, int a, int b)
+static const double contradiction = 3.0; /* combined standard uncertainties */
+
+static double variance_of_difference(const struct wa_fit *fit, int a, int b)
 {
     const double covariance = fit->covariance[a * fit->parameter_count + b];
     return fit->parameters[a].u * fit->parameters[a].u +
            fit->parameters[b].u * fit->parameters[b].u - 2.0 * covariance;
 }
 
-/* Volume at which k protons a molecule are titrated. */
-static struct wa_volume_estimate volume_of(const struct wa_experiment *experiment,
-                                           const struct wa_fit *fit, int protons)
+struct wa_volume_estimate wa_equivalence_by_fit(const struct wa_experiment *experiment,
+                                                const struct wa_fit *fit, int protons)
 {
     const int amount = wa_fit_find(fit, WA_PARAMETER_LN_AMOUNT, 0, 0);
     const int titrant = wa_fit_find(fit, WA_PARAMETER_LN_TITRANT, 0, 0);
     const double ln_ratio = fit->parameters[amount].value - fit->parameters[titrant].value;
     struct wa_volume_estimate estimate = {.volume_mL = 1e3 * protons * exp(ln_ratio) /
                                                        experiment->equivalents};
-    estimate.u_mL = estimate.volume_mL * sqrt(fmax(parameter_u(fit, amount, titrant), 0.0));
+    estimate.u_mL =
+        estimate.volume_mL * sqrt(fmax(variance_of_difference(fit, amount, titrant), 0.0));
     return estimate;
 }
 
@@ -80,6 +82,22 @@ static enum wa_status add_point(struct wa_result *result, struct wa_result_equiv
     return WA_OK;
 }
 
+/* Where fit and curve contradict each other the curve is believed, and the contradiction counts as
+ * uncertainty: the model may not hold what is in the beaker. */
+static void doubt(struct wa_result_equivalence *point, const struct wa_inflection *inflection)
+{
+    if (inflection == NULL || !(inflection->equivalence.u_mL > 0.0)) {
+        return;
+    }
+    const struct wa_volume_estimate *by_curve = &inflection->equivalence;
+    const double difference = fabs(by_curve->volume_mL - point->volume_mL);
+    if (difference > contradiction * hypot(by_curve->u_mL, point->u_mL)) {
+        point->volume_mL = by_curve->volume_mL;
+        point->u_mL = fmax(by_curve->u_mL, 0.5 * difference);
+        point->from_fit = false;
+    }
+}
+
 /* Points of the fit: those with an inflection, and the last one in any case. */
 static enum wa_status add_fitted(const struct wa_identification *work, struct wa_result *result,
                                  bool *used, struct wa_error *error)
@@ -87,9 +105,9 @@ static enum wa_status add_fitted(const struct wa_identification *work, struct wa
     const struct wa_generic *best = &work->study.generic[0];
     const struct wa_experiment *experiment = &result->experiments[0];
     const struct wa_curve *curve = &result->curves[0];
-    const double spacing = volume_of(experiment, &best->fit, 1).volume_mL;
+    const double spacing = wa_equivalence_by_fit(experiment, &best->fit, 1).volume_mL;
     for (int k = 1; k <= best->shown; k++) {
-        const struct wa_volume_estimate fitted = volume_of(experiment, &best->fit, k);
+        const struct wa_volume_estimate fitted = wa_equivalence_by_fit(experiment, &best->fit, k);
         const double within =
             fmin(0.3 * spacing, 0.05 * fitted.volume_mL + 4.0 * fitted.u_mL + 0.02 * spacing);
         const struct wa_inflection *inflection = nearest(curve, fitted.volume_mL, within);
@@ -106,7 +124,9 @@ static enum wa_status add_fitted(const struct wa_identification *work, struct wa
             set_inflection(inflection, curve->in_mV, &point);
             used[inflection - curve->inflections] = true;
         }
-        if (inflection != NULL || k == best->shown) {
+        const bool within_data = fitted.volume_mL <= experiment->volume_mL[experiment->count - 1];
+        if (inflection != NULL || (k == best->shown && (within_data || k == 1))) {
+            doubt(&point, inflection);
             const enum wa_status status = add_point(result, point, error);
             if (status != WA_OK) {
                 return status;

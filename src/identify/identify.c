@@ -110,15 +110,12 @@ static enum wa_status fill(struct wa_identification *work, struct wa_result *res
 {
     enum wa_status (*const steps[])(const struct wa_identification *, struct wa_result *,
                                     struct wa_error *) = {
-        wa_fill_protons,  wa_fill_equivalence, wa_fill_candidates,
-        wa_fill_findings, wa_fill_verdict,     wa_fill_next_tests,
+        wa_fill_protons, wa_fill_equivalence, wa_fill_candidates, wa_fill_findings,
+        wa_fill_verdict, wa_fill_next_tests,  wa_fill_parameters,
     };
     enum wa_status status = WA_OK;
     for (size_t i = 0; status == WA_OK && i < sizeof steps / sizeof steps[0]; i++) {
         status = steps[i](work, result, error);
-    }
-    if (status == WA_OK) {
-        status = wa_fill_parameters(result, error);
     }
     return status == WA_OK ? wa_identify_cautions(work->table, result, error) : status;
 }

@@ -30,6 +30,10 @@ enum wa_status wa_add_sentence(struct wa_result_sentence **list, size_t *count, 
 /** The mass that was titrated, from the notes. */
 struct wa_titrated_mass wa_titrated_mass_of(const struct wa_conditions *conditions);
 
+/** Volume at which so many protons a molecule are titrated, by the fit. */
+struct wa_volume_estimate wa_equivalence_by_fit(const struct wa_experiment *experiment,
+                                                const struct wa_fit *fit, int protons);
+
 /** Equivalence points: by the curve, by the fit, and which of them an inflection shows. */
 enum wa_status wa_fill_equivalence(const struct wa_identification *work, struct wa_result *result,
                                    struct wa_error *error) WA_MUST_USE;
@@ -43,7 +47,8 @@ enum wa_status wa_fill_candidates(const struct wa_identification *work, struct w
                                   struct wa_error *error) WA_MUST_USE;
 
 /** Parameters of the best fit, for the report. */
-enum wa_status wa_fill_parameters(struct wa_result *result, struct wa_error *error) WA_MUST_USE;
+enum wa_status wa_fill_parameters(const struct wa_identification *work, struct wa_result *result,
+                                  struct wa_error *error) WA_MUST_USE;
 
 /** The verdict, and why data are unfit when they are. */
 enum wa_status wa_fill_verdict(const struct wa_identification *work, struct wa_result *result,

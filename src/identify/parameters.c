@@ -44,12 +44,13 @@ static char *name_of(const struct wa_parameter *parameter, const struct shown *s
                : wa_sentence("%s", shown->name);
 }
 
-enum wa_status wa_fill_parameters(struct wa_result *result, struct wa_error *error)
+enum wa_status wa_fill_parameters(const struct wa_identification *work, struct wa_result *result,
+                                  struct wa_error *error)
 {
-    const struct wa_fit *fit = &result->best;
-    if (!result->fitted) {
+    if (work->study.count == 0) {
         return WA_OK;
     }
+    const struct wa_fit *fit = &work->study.generic[0].fit;
     result->parameters = calloc((size_t)fit->parameter_count, sizeof *result->parameters);
     if (result->parameters == NULL) {
         return wa_fail_memory(error);

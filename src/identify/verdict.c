@@ -21,22 +21,18 @@ static void unfit_reasons(const struct wa_identification *work, const struct wa_
         return;
     }
     const struct wa_fit *fit = &work->study.generic[0].fit;
-    const int amount = wa_fit_find(fit, WA_PARAMETER_LN_AMOUNT, 0, 0);
-    const double u = fit->parameters[amount].u;
+    const struct wa_volume_estimate end =
+        wa_equivalence_by_fit(experiment, fit, work->study.generic[0].shown);
+    const double u = end.u_mL / end.volume_mL;
     if (fit->noise_reading > usable_noise) {
         wa_text_append(reasons,
                        "the readings scatter by %.2f pH about the best model, so that this is "
                        "perhaps no acid-base titration or the columns were misread",
                        fit->noise_reading);
     } else if (u > work->amount_limit) {
-        wa_text_append(reasons, "the amount of acid is only known to %.0f %%", 100.0 * u);
+        wa_text_append(reasons, "the equivalence volume is only known to %.0f %%", 100.0 * u);
         const double last = experiment->volume_mL[experiment->count - 1];
-        const double end = 1e3 * work->study.generic[0].shown *
-                           exp(fit->parameters[amount].value - experiment->ln_titrant.mean) /
-                           experiment->equivalents;
-        if (experiment->ln_titrant.u > 2.0 * work->amount_limit) {
-            wa_text_append(reasons, ", because the titrant concentration was not noted");
-        } else if (curve->inflection_count == 0 && end > last) {
+        if (curve->inflection_count == 0 && end.volume_mL > last) {
             wa_text_append(reasons, ": the titration stops before the first equivalence point");
         } else if (curve->inflection_count == 0) {
             wa_text_append(reasons, ": the curve shows no jump, the reaction is not complete "
