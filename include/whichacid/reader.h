@@ -5,6 +5,9 @@
 
 #include "whichacid/run.h"
 
+/** Most bytes of a file that are read: no titration fills more. */
+#define WA_FILE_LIMIT (64u << 20)
+
 /** A note given by the caller, such as an option of the command line. */
 struct wa_given_note {
     const char *name;

@@ -9,6 +9,7 @@ struct wa_report_options {
     int columns;         /**< width of the text, 0: 80; held within 40..100; a plot needs 72 */
     bool colour;         /**< escape sequences for emphasis, never the only carrier of meaning */
     const char *version; /**< of the program */
+    const char *title;   /**< a line before the verdict, or NULL; JSON has none */
 };
 
 /**

@@ -10,7 +10,6 @@
 
 #define WA_COLUMNS_MAX 64  /* columns beyond are not looked at */
 #define WA_POINTS_NEEDED 5 /* fewer points cannot show a curve */
-#define WA_FILE_LIMIT (64u << 20)
 
 /* --- text ----------------------------------------------------------------------------------- */
 

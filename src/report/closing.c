@@ -58,18 +58,6 @@ void report_fit(struct report_writer *writer, const struct wa_result *result)
     }
 }
 
-static void write_sentences(struct report_writer *writer, const char *heading,
-                            const struct wa_result_sentence *sentences, size_t count)
-{
-    for (size_t i = 0; i < count; i++) {
-        if (i == 0) {
-            report_heading(writer, heading);
-        }
-        report_paragraph(writer, "  - ", 4, "%s",
-                         sentences[i].sentence != NULL ? sentences[i].sentence : "");
-    }
-}
-
 static void write_next(struct report_writer *writer, const struct wa_result *result)
 {
     for (size_t i = 0; i < result->next_test_count; i++) {
@@ -107,18 +95,22 @@ static void write_cautions(struct report_writer *writer, const struct wa_result 
     }
 }
 
-/* What the curve's own analysis remarked, once for all runs. */
+/* Findings, and what the curve's own analysis remarked besides. */
 static void write_findings(struct report_writer *writer, const struct wa_result *result)
 {
-    write_sentences(writer, "FINDINGS", result->findings, result->finding_count);
+    static const char heading[] = "FINDINGS";
+    report_sentences(writer, heading, result->findings, result->finding_count);
     bool headed = result->finding_count > 0;
     for (size_t i = 0; i < result->runs.count && result->curves != NULL; i++) {
         for (size_t k = 0; k < result->curves[i].remark_count; k++) {
-            if (!headed) {
-                report_heading(writer, "FINDINGS");
-                headed = true;
+            const char *remark = result->curves[i].remarks[k];
+            if (!report_has_sentence(result->findings, result->finding_count, remark)) {
+                if (!headed) {
+                    report_heading(writer, heading);
+                    headed = true;
+                }
+                report_paragraph(writer, "  - ", 4, "Run %zu: %s", i + 1, remark);
             }
-            report_paragraph(writer, "  - ", 4, "Run %zu: %s", i + 1, result->curves[i].remarks[k]);
         }
     }
 }

@@ -86,8 +86,11 @@ void report_equivalence(struct report_writer *writer, const struct wa_result *re
         wa_text_append(&writer->text, "\n");
         write_methods(writer, result);
     }
-    if (result->curves != NULL && result->runs.count > 0 && result->curves[0].spacing[0] != '\0') {
-        report_paragraph(writer, "  ", 2, "%s", result->curves[0].spacing);
+    const char *spacing =
+        result->curves != NULL && result->runs.count > 0 ? result->curves[0].spacing : "";
+    if (spacing[0] != '\0' &&
+        !report_has_sentence(result->findings, result->finding_count, spacing)) {
+        report_paragraph(writer, "  ", 2, "%s", spacing);
     }
     char share[32];
     if (result->proton_count > 0) {

@@ -113,10 +113,29 @@ void report_measured(struct report_writer *writer, const struct wa_result *resul
     }
 }
 
+/* Slips that the fit found and that no finding names already. */
+static bool has_outliers(const struct wa_result *result)
+{
+    if (!result->fitted || result->best.outlier == NULL || result->experiments == NULL) {
+        return false;
+    }
+    for (size_t i = 0; i < result->finding_count; i++) {
+        if (strcmp(result->findings[i].code, "outlier") == 0) {
+            return false;
+        }
+    }
+    for (size_t i = 0; i < result->experiments[0].count; i++) {
+        if (result->best.outlier[i] > OUTLIER_PROBABILITY) {
+            return true;
+        }
+    }
+    return false;
+}
+
 static void write_outliers(struct report_writer *writer, const struct wa_result *result)
 {
     const struct wa_fit *fit = &result->best;
-    if (!result->fitted || fit->outlier == NULL || result->experiments == NULL) {
+    if (!has_outliers(result)) {
         return;
     }
     const struct wa_experiment *experiment = &result->experiments[0];
@@ -131,19 +150,6 @@ static void write_outliers(struct report_writer *writer, const struct wa_result 
                              share);
         }
     }
-}
-
-static bool has_outliers(const struct wa_result *result)
-{
-    if (!result->fitted || result->best.outlier == NULL || result->experiments == NULL) {
-        return false;
-    }
-    for (size_t i = 0; i < result->experiments[0].count; i++) {
-        if (result->best.outlier[i] > OUTLIER_PROBABILITY) {
-            return true;
-        }
-    }
-    return false;
 }
 
 void report_set_aside(struct report_writer *writer, const struct wa_result *result)
@@ -173,14 +179,12 @@ void report_set_aside(struct report_writer *writer, const struct wa_result *resu
     write_outliers(writer, result);
 }
 
-/* Whether the sentence was said before this remark of this run. */
-static bool said_before(const struct wa_result *result, size_t run, size_t remark,
-                        const char *sentence)
+/* Whether this remark was said by a sentence of the list or by an earlier remark. */
+static bool said_before(const struct wa_result *result, size_t run, size_t remark)
 {
-    for (size_t i = 0; i < result->assumption_count; i++) {
-        if (strcmp(result->assumptions[i].sentence, sentence) == 0) {
-            return true;
-        }
+    const char *sentence = result->runs.runs[run].remarks[remark];
+    if (report_has_sentence(result->assumptions, result->assumption_count, sentence)) {
+        return true;
     }
     for (size_t i = 0; i <= run; i++) {
         const struct wa_run *other = &result->runs.runs[i];
@@ -196,23 +200,17 @@ static bool said_before(const struct wa_result *result, size_t run, size_t remar
 
 void report_assumed(struct report_writer *writer, const struct wa_result *result)
 {
-    bool headed = false;
-    for (size_t i = 0; i < result->assumption_count; i++) {
-        if (!headed) {
-            report_heading(writer, "ASSUMED");
-            headed = true;
-        }
-        report_paragraph(writer, "  - ", 4, "%s", result->assumptions[i].sentence);
-    }
+    static const char heading[] = "ASSUMED";
+    report_sentences(writer, heading, result->assumptions, result->assumption_count);
+    bool headed = result->assumption_count > 0;
     for (size_t i = 0; i < result->runs.count; i++) {
         for (size_t k = 0; k < result->runs.runs[i].remark_count; k++) {
-            const char *sentence = result->runs.runs[i].remarks[k];
-            if (!said_before(result, i, k, sentence)) {
+            if (!said_before(result, i, k)) {
                 if (!headed) {
-                    report_heading(writer, "ASSUMED");
+                    report_heading(writer, heading);
                     headed = true;
                 }
-                report_paragraph(writer, "  - ", 4, "%s", sentence);
+                report_paragraph(writer, "  - ", 4, "%s", result->runs.runs[i].remarks[k]);
             }
         }
     }

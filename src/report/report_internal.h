@@ -55,6 +55,14 @@ void report_paragraph(struct report_writer *writer, const char *first, size_t ha
 void report_item(struct report_writer *writer, const char *label, const char *format, ...)
     WA_PRINTF(3, 4);
 
+/** A list of sentences under a heading; one that replicates bring again is said once. */
+void report_sentences(struct report_writer *writer, const char *heading,
+                      const struct wa_result_sentence *sentences, size_t count);
+
+/** Whether the list says that already. */
+bool report_has_sentence(const struct wa_result_sentence *sentences, size_t count,
+                         const char *sentence);
+
 /** Begin the next row of a table; returns its cells to be filled with report_cell. */
 void report_row(struct report_table *table);
 

@@ -58,6 +58,9 @@ enum wa_status wa_report_text(const struct wa_result *result,
         .columns = chosen_width(options),
         .colour = options != NULL && options->colour,
     };
+    if (options != NULL && options->title != NULL) {
+        report_paragraph(&writer, "", 0, "%s", options->title);
+    }
     write_verdict(&writer, result);
     report_measured(&writer, result);
     report_plot(&writer, result);

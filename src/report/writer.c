@@ -118,6 +118,31 @@ void report_item(struct report_writer *writer, const char *label, const char *fo
     wa_text_free(&first);
 }
 
+bool report_has_sentence(const struct wa_result_sentence *sentences, size_t count,
+                         const char *sentence)
+{
+    for (size_t i = 0; i < count; i++) {
+        if (sentences[i].sentence != NULL && strcmp(sentences[i].sentence, sentence) == 0) {
+            return true;
+        }
+    }
+    return false;
+}
+
+void report_sentences(struct report_writer *writer, const char *heading,
+                      const struct wa_result_sentence *sentences, size_t count)
+{
+    for (size_t i = 0; i < count; i++) {
+        if (i == 0) {
+            report_heading(writer, heading);
+        }
+        const char *sentence = sentences[i].sentence != NULL ? sentences[i].sentence : "";
+        if (!report_has_sentence(sentences, i, sentence)) {
+            report_paragraph(writer, "  - ", 4, "%s", sentence);
+        }
+    }
+}
+
 void report_row(struct report_table *table)
 {
     if (table->failed ||

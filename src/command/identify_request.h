@@ -1,0 +1,35 @@
+/* What a call of `identify` asks for, and the two steps that answer it. */
+#ifndef WHICHACID_COMMAND_IDENTIFY_REQUEST_H
+#define WHICHACID_COMMAND_IDENTIFY_REQUEST_H
+
+#include "command/note_options.h"
+
+#include "base/text.h"
+#include "whichacid/identify.h"
+
+/** The call. Texts belong to the argument vector. */
+struct identify_request {
+    struct note_options *notes;
+    const char **paths;
+    size_t path_count;
+    const char *table; /**< folder */
+    const char **also; /**< files or folders laid over it */
+    size_t also_count;
+    const char **among; /**< as given: names, or several with commas between */
+    size_t among_count;
+    const char *explain;
+    const char *threshold;
+    const char *output;
+    bool json;
+    bool each;
+};
+
+/**
+ * Answer the call. The answers of files that could be used are in `answer` even when another file
+ * failed; failures are told on standard error.
+ * @param[out] answer  what goes to standard output or the file
+ * @return the exit status
+ */
+int identify_answer(const struct identify_request *request, struct wa_text *answer);
+
+#endif
