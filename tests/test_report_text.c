@@ -170,12 +170,12 @@ static void rows_and_priors_are_told(void **state)
 static void candidates_can_be_checked(void **state)
 {
     (void)state;
-    char *text = report_of(plain_words, 80);
+    char *text = report_of(plain_words, 100);
     const char *list = strstr(text, "CANDIDATES");
     assert_non_null(list);
     assert_non_null(strstr(list, "1.   98.1 %"));
-    assert_non_null(strstr(list, "60.05 g/mol; measured is off by -0.4 u"));
-    assert_non_null(strstr(list, "pKa 4.756 ± 0.010 (+0.5 u); 13.10 ± 0.30 (not seen here)"));
+    assert_non_null(strstr(list, "molar mass 60.05 g/mol (-0.4 u)"));
+    assert_non_null(strstr(list, "pKa 4.756 ± 0.010 (+0.5 u), 13.10 ± 0.30 (not seen)"));
     assert_non_null(strstr(list, "0.4 %  something that is not in the table"));
     assert_non_null(strstr(list, "3.  < 0.1 %"));
     free(text);

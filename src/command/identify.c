@@ -25,8 +25,8 @@ static const char documentation[] =
     "is given.\v"
     "Example:\n"
     "  whichacid identify vial17.csv --sample-mass \"0.3127 g\" \\\n"
-    "    --titrant \"sodium hydroxide\" --titrant-concentration \"0.1023 ± 0.0002 mol/L\" \\\n"
-    "    --solution-volume \"50.0 mL\"\n\n"
+    "    --solution-volume \"50.0 mL\" --titrant \"sodium hydroxide\" \\\n"
+    "    --titrant-concentration \"0.1023 ± 0.0002 mol/L\"\n\n"
     "RUN may be - for standard input. Exit status: 0 an answer, whatever it is; 1 input that "
     "cannot be used; 2 a wrong call.";
 

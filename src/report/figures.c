@@ -71,6 +71,12 @@ size_t report_conditions(const struct wa_conditions *conditions, struct report_c
     return sizeof all / sizeof all[0];
 }
 
+const char *report_note_name(const struct wa_note *note)
+{
+    const char *known = wa_note_known_name(note->name);
+    return known != NULL ? known : note->name;
+}
+
 bool report_is_condition(const char *name)
 {
     static const struct wa_conditions none;

@@ -23,21 +23,31 @@ static json_t *note_of(json_t *value, double u, const char *unit, enum wa_origin
     return json_done(&note);
 }
 
-json_t *json_notes(const struct wa_run *run)
+/* The texts as given, by known name; of several for one name the one that is in force. */
+static void put_texts(struct json_maker *notes, const struct wa_run *run)
 {
-    struct json_maker notes = json_make_object();
     for (size_t i = 0; i < run->note_count; i++) {
         const struct wa_note *note = &run->notes[i];
+        const char *known = report_note_name(note);
+        if (wa_run_find_note(run, known) != note) {
+            continue;
+        }
         struct wa_text name = {0};
-        report_clean(&name, note->name, false);
+        report_clean(&name, known, false);
         if (name.failed) {
-            notes.failed = true;
+            notes->failed = true;
         } else {
-            json_put(&notes, name.bytes,
+            json_put(notes, name.bytes,
                      note_of(json_text(note->text), NAN, NULL, note->origin, note->line));
         }
         wa_text_free(&name);
     }
+}
+
+json_t *json_notes(const struct wa_run *run)
+{
+    struct json_maker notes = json_make_object();
+    put_texts(&notes, run);
     struct report_condition list[16];
     size_t count = report_conditions(&run->conditions, list);
     for (size_t i = 0; i < count; i++) {

@@ -28,24 +28,34 @@ static void write_points(struct report_writer *writer, const struct wa_run *run)
                 run->heading != NULL ? run->heading : "", run->point_count, span, kind);
 }
 
-/* The name of the note that gives a text, with its line. */
+/* Where a value came from; of an option also which note of the file it overrides. */
+static void describe_origin(char *text, size_t size, const struct wa_run *run, const char *name,
+                            enum wa_origin origin, long line)
+{
+    report_origin(text, size, origin, line);
+    for (size_t i = 0; i < run->note_count && origin == WA_ORIGIN_OPTION; i++) {
+        const struct wa_note *note = &run->notes[i];
+        if (note->origin == WA_ORIGIN_NOTE && strcmp(report_note_name(note), name) == 0) {
+            snprintf(text, size, "option, in place of line %ld", note->line);
+            return;
+        }
+    }
+}
+
 static void write_text(struct report_writer *writer, const struct wa_run *run, const char *name,
                        const char *text)
 {
+    const struct wa_note *note = wa_run_find_note(run, name);
     if (text == NULL) {
         return;
     }
-    char origin[32] = "";
-    for (size_t i = 0; i < run->note_count; i++) {
-        if (strcmp(run->notes[i].name, name) == 0) {
-            report_origin(origin, sizeof origin, run->notes[i].origin, run->notes[i].line);
-        }
-    }
-    if (origin[0] != '\0') {
-        report_item(writer, name, "%s (%s)", text, origin);
-    } else {
+    if (note == NULL) {
         report_item(writer, name, "%s", text);
+        return;
     }
+    char origin[64];
+    describe_origin(origin, sizeof origin, run, name, note->origin, note->line);
+    report_item(writer, name, "%s (%s)", text, origin);
 }
 
 static bool same_noted(const struct wa_noted *one, const struct wa_noted *other)
@@ -56,7 +66,8 @@ static bool same_noted(const struct wa_noted *one, const struct wa_noted *other)
            (!one->quantity.has_u || one->quantity.u == other->quantity.u);
 }
 
-static void write_quantity(struct report_writer *writer, const struct report_condition *condition)
+static void write_quantity(struct report_writer *writer, const struct wa_run *run,
+                           const struct report_condition *condition)
 {
     const struct wa_quantity *quantity = &condition->noted->quantity;
     bool per_cent = condition->dimension == WA_DIMENSION_FRACTION;
@@ -65,8 +76,9 @@ static void write_quantity(struct report_writer *writer, const struct report_con
     report_quantity(figure, sizeof figure, scale * quantity->value,
                     quantity->has_u ? scale * quantity->u : NAN);
     const char *unit = per_cent ? "%" : wa_dimension_unit(condition->dimension);
-    char origin[32];
-    report_origin(origin, sizeof origin, condition->noted->origin, condition->noted->line);
+    char origin[64];
+    describe_origin(origin, sizeof origin, run, condition->name, condition->noted->origin,
+                    condition->noted->line);
     report_item(writer, condition->name, "%s%s%s (%s)", figure, unit[0] != '\0' ? " " : "", unit,
                 origin);
 }
@@ -86,12 +98,14 @@ static void write_conditions(struct report_writer *writer, const struct wa_run *
     }
     for (size_t i = 0; i < count; i++) {
         if (list[i].noted->known && (run == first || !same_noted(list[i].noted, before[i].noted))) {
-            write_quantity(writer, &list[i]);
+            write_quantity(writer, run, &list[i]);
         }
     }
     for (size_t i = 0; i < run->note_count && run == first; i++) {
-        if (!report_is_condition(run->notes[i].name)) {
-            write_text(writer, run, run->notes[i].name, run->notes[i].text);
+        const struct wa_note *note = &run->notes[i];
+        const char *name = report_note_name(note);
+        if (!report_is_condition(name) && wa_run_find_note(run, name) == note) {
+            write_text(writer, run, name, note->text);
         }
     }
 }

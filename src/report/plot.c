@@ -6,14 +6,16 @@
 #include <stdio.h>
 #include <string.h>
 
-#define ROWS 17
+#define ROWS_AIMED 17
+#define ROWS_MOST 32
 #define CANVAS_MOST 88
 #define MARGIN 9 /* columns left of the canvas: tick label and axis */
 #define COLUMNS_NEEDED 72
 
 struct plot {
-    char canvas[ROWS][CANVAS_MOST];
+    char canvas[ROWS_MOST][CANVAS_MOST];
     size_t width;
+    int rows;
     double volume_low, volume_high;
     double reading_low, reading_high;
     double shift; /* blank, taken off every volume */
@@ -54,7 +56,8 @@ static int column_of(const struct plot *plot, double volume)
 static int row_of(const struct plot *plot, double reading)
 {
     double share = (reading - plot->reading_low) / (plot->reading_high - plot->reading_low);
-    return share >= 0.0 && share <= 1.0 ? ROWS - 1 - (int)lround(share * (ROWS - 1)) : -1;
+    return share >= 0.0 && share <= 1.0 ? plot->rows - 1 - (int)lround(share * (plot->rows - 1))
+                                        : -1;
 }
 
 static void mark(struct plot *plot, double volume, double reading, char character)
@@ -71,7 +74,7 @@ static void draw_equivalence(struct plot *plot, const struct wa_result *result)
     for (size_t i = 0; i < result->equivalence_count; i++) {
         double volume = result->equivalence_points[i].volume_mL;
         int column = isfinite(volume) ? column_of(plot, volume) : -1;
-        for (int row = 0; column >= 0 && row < ROWS; row++) {
+        for (int row = 0; column >= 0 && row < plot->rows; row++) {
             plot->canvas[row][column] = ':';
         }
     }
@@ -109,7 +112,7 @@ static void draw_points(struct plot *plot, const struct wa_run *run)
 static void write_rows(struct report_writer *writer, const struct plot *plot, double step)
 {
     struct wa_text *text = &writer->text;
-    for (int row = 0; row < ROWS; row++) {
+    for (int row = 0; row < plot->rows; row++) {
         char label[24] = "";
         char axis = '|';
         int ticks = (int)lround((plot->reading_high - plot->reading_low) / step);
@@ -202,7 +205,21 @@ static void write_equivalence_labels(struct report_writer *writer, const struct 
     }
 }
 
-/* Ranges of the points; the volume axis starts at zero when the run does so nearly. */
+/* As many rows and columns as put every tick on one, evenly. */
+static bool lay_out(struct plot *plot, size_t room, double reading_step, double volume_step)
+{
+    int reading_ticks = (int)lround((plot->reading_high - plot->reading_low) / reading_step);
+    int volume_ticks = (int)lround((plot->volume_high - plot->volume_low) / volume_step);
+    if (reading_ticks < 1 || volume_ticks < 1 || (size_t)volume_ticks >= room) {
+        return false;
+    }
+    int rows_each = (ROWS_AIMED - 1 + reading_ticks / 2) / reading_ticks;
+    plot->rows = (rows_each < 1 ? 1 : rows_each) * reading_ticks + 1;
+    plot->width = (room - 1) / (size_t)volume_ticks * (size_t)volume_ticks + 1;
+    return plot->rows <= ROWS_MOST;
+}
+
+/* Ranges of the points. */
 static void measure(struct plot *plot, const struct wa_run *run)
 {
     plot->volume_low = plot->reading_low = INFINITY;
@@ -225,14 +242,15 @@ void report_plot(struct report_writer *writer, const struct wa_result *result)
     const struct wa_run *run = &result->runs.runs[0];
     const struct wa_noted *blank = &run->conditions.blank;
     struct plot plot = {.shift = blank->known ? blank->quantity.value : 0.0};
-    plot.width = writer->columns - MARGIN - 3;
-    plot.width = plot.width > CANVAS_MOST ? CANVAS_MOST : plot.width;
+    size_t room = writer->columns - MARGIN - 3;
+    room = room > CANVAS_MOST ? CANVAS_MOST : room;
     memset(plot.canvas, ' ', sizeof plot.canvas);
     measure(&plot, run);
     double reading_step;
     double volume_step;
     if (!widen(&plot.reading_low, &plot.reading_high, 8.0, &reading_step) ||
-        !widen(&plot.volume_low, &plot.volume_high, 10.0, &volume_step)) {
+        !widen(&plot.volume_low, &plot.volume_high, 10.0, &volume_step) ||
+        !lay_out(&plot, room, reading_step, volume_step)) {
         return;
     }
     draw_equivalence(&plot, result);

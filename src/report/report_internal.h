@@ -92,6 +92,9 @@ struct report_condition {
 /** The quantities of a run's conditions in reading order. @return how many */
 size_t report_conditions(const struct wa_conditions *conditions, struct report_condition list[16]);
 
+/** The name that a note is known by, or its own. */
+const char *report_note_name(const struct wa_note *note);
+
 /** Whether a note's name is one of report_conditions, or of the texts the conditions hold. */
 bool report_is_condition(const char *name);
 

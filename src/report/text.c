@@ -26,7 +26,7 @@ static void write_verdict(struct report_writer *writer, const struct wa_result *
     report_probability(share, sizeof share, verdict->probability);
     report_probability(asked, sizeof asked, verdict->threshold);
     if (verdict->kind == WA_VERDICT_UNFIT) {
-        report_paragraph(writer, "", 0, "Verdict: unfit (the data cannot support an answer).");
+        report_paragraph(writer, "", 0, "Verdict: unfit.");
     } else {
         report_paragraph(writer, "", 0, "Verdict: %s, probability %s (at least %s is asked for).",
                          verdict_word(verdict->kind), share, asked);

@@ -16,6 +16,22 @@ void report_heading(struct report_writer *writer, const char *heading)
                    writer->colour ? plain : "");
 }
 
+/* A figure stays with its unit, and a value with its uncertainty: "0.30 ± 0.02 mL" is one word as
+ * far as lines go, while "30 of 40" may as well be. */
+static bool may_break(const char *text, size_t at)
+{
+    static const char plus_minus[] = "\xC2\xB1";
+    const unsigned char next = (unsigned char)text[at + 1];
+    if (strncmp(text + at + 1, plus_minus, 2) == 0 ||
+        (at >= 2 && strncmp(text + at - 2, plus_minus, 2) == 0)) {
+        return false;
+    }
+    bool after_figure = at > 0 && text[at - 1] >= '0' && text[at - 1] <= '9';
+    bool unit =
+        (next >= 'A' && next <= 'Z') || (next >= 'a' && next <= 'z') || next == '%' || next == 0xC2;
+    return !(after_figure && unit);
+}
+
 /* The longest piece of `text` that fits `room` columns: whole words, or part of one that is longer
  * than a line. Returns its bytes. */
 static size_t piece_that_fits(const char *text, size_t room)
@@ -26,7 +42,7 @@ static size_t piece_that_fits(const char *text, size_t room)
     while (text[at] != '\0') {
         size_t bytes;
         size_t wide = report_point_columns(text + at, &bytes);
-        if (text[at] == ' ') {
+        if (text[at] == ' ' && may_break(text, at)) {
             last_space = at;
         }
         if (columns + wide > room && at > 0) {
