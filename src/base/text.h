@@ -29,7 +29,8 @@ char *wa_text_copy(const char *bytes, size_t length);
 /**
  * Fold UTF-8 for comparing words: lower case, Latin accents off, both micro signs to "u",
  * superscript digits to digits, degree signs to "deg", dashes and the minus sign to "-", the
- * delta signs to "delta", runs of white space to one space, none at either end.
+ * delta signs to "delta", Cyrillic letters that pass for Latin ones (and the "мл" of a millilitre)
+ * to those, runs of white space to one space, none at either end.
  * @param[out] folded  always terminated; cut at `size`
  * @return length of the folded text
  */

@@ -166,7 +166,8 @@ static void finish(struct wa_cell_value *cell, const char *rest, enum wa_unit la
         return;
     }
     size_t length = strlen(rest);
-    while (length > 0 && (rest[length - 1] == '*' || rest[length - 1] == ' ')) {
+    /* A backslash or two end a row of a typeset table. */
+    while (length > 0 && strchr("* \\", rest[length - 1]) != NULL) {
         cell->starred = cell->starred || rest[length - 1] == '*';
         length--;
     }
@@ -211,6 +212,11 @@ static struct wa_cell_value parse_folded(const char *text, size_t length)
     struct wa_cell_value cell = from_number(&number);
     finish(&cell, at + used, label);
     return cell;
+}
+
+bool wa_cell_is_numeric(const struct wa_cell_value *value)
+{
+    return value->kind == WA_CELL_NUMBER || value->kind == WA_CELL_GROUPED;
 }
 
 struct wa_cell_value wa_cell_parse(const char *text, size_t length)

@@ -148,6 +148,15 @@ static enum wa_status check_marks(const struct wa_sheet *sheet, const struct wa_
     return WA_OK;
 }
 
+static bool same_cell(const struct wa_sheet *sheet, size_t column, uint32_t a, uint32_t b)
+{
+    size_t a_length;
+    size_t b_length;
+    const char *a_text = wa_sheet_cell(sheet, &sheet->rows[a], column, &a_length);
+    const char *b_text = wa_sheet_cell(sheet, &sheet->rows[b], column, &b_length);
+    return a_length == b_length && memcmp(a_text, b_text, a_length) == 0;
+}
+
 enum wa_status wa_raw_collect(const struct wa_sheet *sheet, const struct wa_table_part *table,
                               const struct wa_column_choice *choice, bool among_several,
                               struct wa_raw_list *list, struct wa_error *error)
@@ -176,6 +185,9 @@ enum wa_status wa_raw_collect(const struct wa_sheet *sheet, const struct wa_tabl
             return status;
         }
         raw->after_words = after_words;
+        raw->new_label = list->count > 0 && !skip && table->label_column >= 0 &&
+                         !same_cell(sheet, (size_t)table->label_column,
+                                    list->raw[list->count - 1].row, (uint32_t)r);
         after_words = after_words && skip;
         list->count += !skip;
     }

@@ -119,6 +119,32 @@ static bool are_pairs(const struct wa_table_part *table, const size_t *unknown, 
     return true;
 }
 
+static bool starts_at_zero(const struct wa_column *column)
+{
+    return column->first == 0 && runs_one_way(column);
+}
+
+/* Of three columns or more, the first that could be pH and does not count up from zero, with the
+ * nearest rising column before it. */
+static void guess_among(const struct wa_table_part *table, const size_t *unknown, size_t count,
+                        size_t *volume, size_t *reading)
+{
+    for (size_t i = 1; i < count; i++) {
+        const struct wa_column *column = &table->columns[unknown[i]];
+        if (!looks_like_pH(column) || starts_at_zero(column)) {
+            continue;
+        }
+        for (size_t k = i; k > 0; k--) {
+            const struct wa_column *before = &table->columns[unknown[k - 1]];
+            if (runs_one_way(before) && before->rising > before->falling) {
+                *volume = k - 1;
+                *reading = i;
+                return;
+            }
+        }
+    }
+}
+
 /* Guess among unnamed columns: which is the volume, which the reading. */
 static void guess_both(struct wa_table_part *table, const size_t *unknown, size_t count)
 {
@@ -136,15 +162,7 @@ static void guess_both(struct wa_table_part *table, const size_t *unknown, size_
         volume = 1;
         reading = 0;
     } else if (count > 2) {
-        /* The first column that could be pH after one that runs one way. */
-        for (size_t i = 1; i < count; i++) {
-            if (runs_one_way(&table->columns[unknown[i - 1]]) &&
-                looks_like_pH(&table->columns[unknown[i]])) {
-                volume = i - 1;
-                reading = i;
-                break;
-            }
-        }
+        guess_among(table, unknown, count, &volume, &reading);
     }
     table->columns[unknown[volume]].header.role = WA_ROLE_VOLUME;
     table->columns[unknown[reading]].header.role = reading_role(&table->columns[unknown[reading]]);
@@ -188,10 +206,15 @@ static bool is_measured(const struct wa_table_part *table, size_t c)
     return mostly_numbers(table, c) && !table->columns[c].header.computed;
 }
 
-/* Totals are what is wanted; then plain volumes, burette readings, increments. */
+/* Totals are what is wanted; then plain volumes, burette readings, increments. A column that
+ * starts at zero is a total whatever its name. */
 static int volume_rank(const struct wa_column *column)
 {
-    return column->header.total ? 3 : column->header.increment ? 0 : column->header.burette ? 1 : 2;
+    int rank = column->header.total       ? 3
+               : column->header.increment ? 0
+               : column->header.burette   ? 1
+                                          : 2;
+    return rank + (column->first == 0 && rank > 0 ? 2 : 0);
 }
 
 /* Whether each reading stands before its volume: pH, V, pH, V. */
@@ -215,6 +238,10 @@ static int volume_for(const struct wa_table_part *table, size_t c)
     int best = -1;
     int step = readings_lead(table) ? 1 : -1;
     bool passed_reading = false;
+    size_t readings = 0;
+    for (size_t i = 0; i < table->column_count; i++) {
+        readings += is_reading(&table->columns[i]);
+    }
     for (int at = (int)c + step; at >= 0 && at < (int)table->column_count; at += step) {
         const struct wa_column *column = &table->columns[at];
         passed_reading = passed_reading || (is_reading(column) && best >= 0);
@@ -226,8 +253,10 @@ static int volume_for(const struct wa_table_part *table, size_t c)
             best = at;
         }
     }
-    for (int at = 0; best < 0 && at < (int)table->column_count; at++) {
-        if (table->columns[at].header.role == WA_ROLE_VOLUME && is_measured(table, (size_t)at)) {
+    bool any = best < 0 || readings == 1;
+    for (int at = 0; any && at < (int)table->column_count; at++) {
+        if (table->columns[at].header.role == WA_ROLE_VOLUME && is_measured(table, (size_t)at) &&
+            (best < 0 || volume_rank(&table->columns[at]) > volume_rank(&table->columns[best]))) {
             best = at;
         }
     }
@@ -307,12 +336,62 @@ static void say_guess(const struct wa_column_choice *choice, struct wa_text *rem
                    choice->kind == WA_ROLE_PH ? "pH" : "potential in mV");
 }
 
+/* A column such as "sample" whose text stays for many rows and then changes tells runs apart. */
+static bool tells_runs_apart(const struct wa_sheet *sheet, const struct wa_table_part *table,
+                             size_t c)
+{
+    static const char *const words[] = {"sample",  "run",       "trial",   "replicate", "probe",
+                                        "serie",   "essai",     "versuch", "muestra",   "campione",
+                                        "amostra", "titration", "monster", "lauf",      "curve"};
+    char folded[64];
+    wa_text_fold(table->columns[c].text, strlen(table->columns[c].text), folded, sizeof folded);
+    bool named = false;
+    for (size_t i = 0; i < sizeof words / sizeof words[0]; i++) {
+        named = named || strstr(folded, words[i]) != NULL;
+    }
+    size_t rows = 0;
+    size_t changes = 0;
+    const struct wa_row *before = NULL;
+    for (size_t r = table->first_row; named && r < table->end_row; r++) {
+        const struct wa_row *row = &sheet->rows[r];
+        if (row->kind != WA_ROW_NUMBERS || row->number_count < 2) {
+            continue;
+        }
+        size_t length;
+        size_t length_before = 0;
+        const char *text = wa_sheet_cell(sheet, row, c, &length);
+        const char *text_before =
+            before != NULL ? wa_sheet_cell(sheet, before, c, &length_before) : text;
+        length_before = before != NULL ? length_before : length;
+        changes += length != length_before || memcmp(text, text_before, length) != 0;
+        before = row;
+        rows++;
+    }
+    return changes > 0 && (changes + 1) * WA_POINTS_NEEDED <= rows;
+}
+
+static int label_column(const struct wa_sheet *sheet, const struct wa_table_part *table)
+{
+    for (size_t c = 0; c < table->column_count; c++) {
+        enum wa_role role = table->columns[c].header.role;
+        if ((role == WA_ROLE_UNKNOWN || role == WA_ROLE_OTHER) &&
+            tells_runs_apart(sheet, table, c)) {
+            return (int)c;
+        }
+    }
+    return -1;
+}
+
 enum wa_status wa_columns_choose(const struct wa_sheet *sheet, struct wa_table_part *table,
                                  struct wa_column_choice choices[WA_CHOICES_MAX], size_t *count,
                                  struct wa_text *remark, struct wa_error *error)
 {
     *count = 0;
     roles_from_units(table);
+    table->label_column = label_column(sheet, table);
+    if (table->label_column >= 0) {
+        table->columns[table->label_column].header.role = WA_ROLE_OTHER;
+    }
     bool guessed = guess_roles(table);
     *count = take_readings(table, WA_ROLE_PH, choices, *count, remark);
     *count = take_readings(table, WA_ROLE_MV, choices, *count, remark);

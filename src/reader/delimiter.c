@@ -85,6 +85,10 @@ static bool starts_column(const char *cell, size_t cell_length, const struct tok
     }
     struct wa_header before = wa_header_parse(cell, cell_length);
     struct wa_header word = wa_header_parse(token->text, token->length);
+    /* Words that say nothing lead: "Corrected Volume". */
+    if (before.role == WA_ROLE_UNKNOWN) {
+        return false;
+    }
     return word.role != WA_ROLE_UNKNOWN && word.role != before.role &&
            !(before.role == WA_ROLE_OTHER && word.unit != WA_UNIT_NONE && word.weak) &&
            !(before.unit == WA_UNIT_NONE && before.role != WA_ROLE_UNKNOWN && is_unit(token) &&
@@ -120,11 +124,15 @@ size_t wa_sheet_join_spaces(const char *line, size_t length, char *spaced)
     struct token tokens[TOKENS_MAX];
     size_t count = split_tokens(line, length, tokens);
     size_t numbers = 0;
-    for (size_t i = 0; i < count && numbers < 2; i++) {
+    bool leads =
+        count > 0 && wa_cell_parse(tokens[0].text, tokens[0].length).kind == WA_CELL_NUMBER;
+    for (size_t i = 0; i < count; i++) {
         numbers += wa_cell_parse(tokens[i].text, tokens[i].length).kind == WA_CELL_NUMBER;
     }
+    /* "0.1 M HCl (mL) pH 0.1 M HCl (mL) pH" holds two numbers and is a header all the same. */
+    bool is_data = numbers >= 2 && (numbers * 3 >= count || (leads && numbers * 4 >= count));
     size_t joined =
-        numbers >= 2 ? join_numbers(tokens, count, spaced) : join_words(tokens, count, spaced);
+        is_data ? join_numbers(tokens, count, spaced) : join_words(tokens, count, spaced);
     spaced[joined] = '\0';
     return joined;
 }
@@ -144,7 +152,7 @@ static void count_cell(struct cut *cut, const char *text, size_t length)
     }
     struct wa_cell_value value = wa_cell_parse(text, length);
     cut->filled += value.kind != WA_CELL_EMPTY;
-    cut->numbers += value.kind == WA_CELL_NUMBER;
+    cut->numbers += wa_cell_is_numeric(&value);
 }
 
 static struct cut cut_line(const char *line, size_t length, char delimiter)
@@ -182,7 +190,7 @@ static double line_score(const char *line, size_t length, char delimiter)
 
 char wa_sheet_delimiter(const char *text, size_t length)
 {
-    static const char candidates[] = {'\t', ';', '|', ',', ' '};
+    static const char candidates[] = {'\t', ';', '|', '&', ',', ' '};
     double scores[sizeof candidates] = {0};
     size_t lines = 0;
     for (size_t i = 0; i < length; i++) {
@@ -203,7 +211,8 @@ char wa_sheet_delimiter(const char *text, size_t length)
     }
     size_t best = 0;
     for (size_t i = 1; i < sizeof candidates; i++) {
-        best = scores[i] > scores[best] + 1e-9 ? i : best;
+        /* A clear lead is needed: stray numbers in a preamble must not decide. */
+        best = scores[i] > 1.1 * scores[best] ? i : best;
     }
     return scores[best] > 0 ? candidates[best] : '\0';
 }

@@ -165,6 +165,14 @@ static enum wa_status give_heading(struct wa_reading *reading, size_t i, struct 
         run->heading = heading_from_columns(reading, &reading->spans[i]);
         return run->heading == NULL ? wa_fail_memory(error) : WA_OK;
     }
+    int label = reading->tables[reading->spans[i].table].label_column;
+    if (label >= 0) {
+        size_t length;
+        const struct wa_row *first = &reading->sheet.rows[reading->spans[i].first_row];
+        const char *text = wa_sheet_cell(&reading->sheet, first, (size_t)label, &length);
+        run->heading = wa_text_copy(text, length);
+        return run->heading == NULL ? wa_fail_memory(error) : WA_OK;
+    }
     const struct wa_row *row = heading_row(reading, i, around);
     if (row != NULL) {
         run->heading = heading_from_row(&reading->sheet, row);

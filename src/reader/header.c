@@ -152,6 +152,15 @@ static const char *const total_words[] = {
     "tot",           "cumulated",  "verbrauch",  "verse",  "consumption",
     "overall",       "sum",        NULL};
 
+/* Words that say what was added: such a column holds what has been added so far. */
+static const char *const added_words[] = {
+    "added",          "addition",   "naoh",        "koh",       "hcl",       "titrant",
+    "titrans",        "titrante",   "titulante",   "titolante", "zugegeben", "ajoute",
+    "ajoutee",        "verse",      "versee",      "anadido",   "agregado",  "aggiunto",
+    "adicionado",     "toegevoegd", "toegevoegde", "base",      "acid",      "vnaoh",
+    "vhcl",           "vkoh",       "gastado",     "dispensed", "delivered", "titriermittel",
+    "titrantvolumen", "h2so4",      "hno3",        "oh",        NULL};
+
 static const char *const burette_words[] = {
     "reading",    "ablesung",         "lecture", "lectura", "lettura", "leitura",
     "aflezing",   "burette",          "buret",   "buretta", "bureta",  "burettenstand",
@@ -186,12 +195,30 @@ static void blank_out(char *folded, const char *piece)
     }
 }
 
+/* "VolumeReading" and "VolumeNaOH" are two words each; "pH" and "VNaOH" are one. */
+static size_t part_joined_words(const char *text, size_t length, char *apart, size_t size)
+{
+    size_t at = 0;
+    size_t small = 0;
+    for (size_t i = 0; i < length && at + 2 < size; i++) {
+        bool capital = text[i] >= 'A' && text[i] <= 'Z';
+        if (capital && small >= 3) {
+            apart[at++] = ' ';
+        }
+        small = text[i] >= 'a' && text[i] <= 'z' ? small + 1 : 0;
+        apart[at++] = text[i];
+    }
+    return at;
+}
+
 static void split_words(const char *text, size_t length, struct words *words)
 {
     static const char *const not_volumes[] = {"mmol/l", "mol/l", "mol l-1", "mol*l-1", "mg/l",
                                               "g/l",    "meq/l", "mol/dm3", "mol dm-3"};
     *words = (struct words){0};
-    size_t folded = wa_text_fold(text, length, words->folded, sizeof words->folded);
+    char apart[160];
+    size_t apart_length = part_joined_words(text, length, apart, sizeof apart);
+    size_t folded = wa_text_fold(apart, apart_length, words->folded, sizeof words->folded);
     for (size_t i = 0; i < sizeof not_volumes / sizeof not_volumes[0]; i++) {
         blank_out(words->folded, not_volumes[i]);
     }
@@ -287,7 +314,11 @@ static enum wa_unit unit_of(const struct words *words, size_t *at)
 /* A single letter is what textbooks use: V for the volume, E or U for the potential. */
 static bool only_letter(const struct words *words, const char *letters)
 {
-    return words->count > 0 && words->length[0] == 1 && strchr(letters, words->word[0][0]) != NULL;
+    if (words->count == 0 || strchr(letters, words->word[0][0]) == NULL) {
+        return false;
+    }
+    size_t digits = strspn(words->word[0] + 1, "0123456789");
+    return words->length[0] == 1 || (words->length[0] <= 3 && digits + 1 >= words->length[0]);
 }
 
 static enum wa_role role_of(const struct words *words, enum wa_unit unit)
@@ -316,7 +347,9 @@ static enum wa_role role_of(const struct words *words, enum wa_unit unit)
     if (unit != WA_UNIT_NONE) {
         return WA_ROLE_OTHER;
     }
-    if (only_letter(words, "v") || has_any(words, volume_words)) {
+    if (strstr(words->folded, "equivalents") != NULL ||
+        strstr(words->folded, "aquivalent") != NULL || only_letter(words, "v") ||
+        has_any(words, volume_words)) {
         return WA_ROLE_VOLUME;
     }
     if (only_letter(words, "eu") || has_any(words, mv_words)) {
@@ -333,17 +366,24 @@ struct wa_header wa_header_parse(const char *text, size_t length)
     size_t unit_at;
     header.unit = unit_of(&words, &unit_at);
     header.role = role_of(&words, header.unit);
-    /* A comment column may speak of volumes; what leads is what counts. */
+    /* T is a temperature and t a time; folding has lost the difference. */
+    if (header.role == WA_ROLE_UNKNOWN && words.count == 1 && word_is(&words, 0, "t")) {
+        header.role = memchr(text, 'T', length) != NULL ? WA_ROLE_TEMPERATURE : WA_ROLE_TIME;
+    }
     header.weak = words.count == 1 && words.length[0] == 1;
     header.increment = has_any(&words, increment_words) || strstr(words.folded, "deltav") != NULL;
     header.total = has_any(&words, total_words);
     header.burette = has_any(&words, burette_words);
+    header.added = has_any(&words, added_words);
     header.second =
         has_any(&words, second_words) ||
         ((strstr(words.folded, "electrode") != NULL || strstr(words.folded, "elektrode") != NULL ||
           strstr(words.folded, "elettrodo") != NULL || strstr(words.folded, "electrodo") != NULL ||
           strstr(words.folded, "eletrodo") != NULL) &&
          (strchr(words.folded, '2') != NULL || strstr(words.folded, "electrode b") != NULL));
+    header.equivalents =
+        header.role == WA_ROLE_VOLUME && header.unit == WA_UNIT_NONE &&
+        (strstr(words.folded, "equivalents") != NULL || strstr(words.folded, "aquivalent") != NULL);
     header.computed = has_any(&words, computed_words);
     return header;
 }

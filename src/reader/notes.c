@@ -33,6 +33,26 @@ static bool is_known_name(const char *text, size_t length)
     return wa_note_known_name(folded) != NULL;
 }
 
+/* "Sample volume (mL)" names the unit of what follows. */
+static void split_unit(const char *name, size_t *name_length, const char **unit,
+                       size_t *unit_length)
+{
+    size_t length = *name_length;
+    if (length < 4 || (name[length - 1] != ')' && name[length - 1] != ']')) {
+        return;
+    }
+    size_t open = length - 1;
+    while (open > 0 && name[open] != '(' && name[open] != '[') {
+        open--;
+    }
+    if (open < 2 || name[open - 1] != ' ') {
+        return;
+    }
+    *unit = name + open + 1;
+    *unit_length = length - open - 2;
+    *name_length = open - 1;
+}
+
 static bool add_note(struct wa_found_notes *notes, const char *name, size_t name_length,
                      const char *text, size_t text_length, uint32_t row, bool loose)
 {
@@ -43,13 +63,21 @@ static bool add_note(struct wa_found_notes *notes, const char *name, size_t name
     *note = (struct wa_found_note){.row = row, .loose = loose};
     wa_text_trim(&name, &name_length);
     wa_text_trim(&text, &text_length);
+    const char *unit = "";
+    size_t unit_length = 0;
+    split_unit(name, &name_length, &unit, &unit_length);
     snprintf(note->name, sizeof note->name, "%.*s", (int)name_length, name);
-    note->text = wa_text_copy(text, text_length);
-    if (note->text == NULL) {
-        return false;
+    struct wa_text value = {0};
+    wa_text_append(&value, "%.*s", (int)text_length, text);
+    if (unit_length > 0 && text_length > 0) {
+        wa_text_append(&value, " %.*s", (int)unit_length, unit);
     }
-    notes->count++;
-    return true;
+    note->text = value.bytes;
+    notes->count += !value.failed;
+    if (value.failed) {
+        wa_text_free(&value);
+    }
+    return !value.failed;
 }
 
 /* Cells from `first` on, joined by spaces: "0,1" | "mol/L". */
@@ -144,20 +172,36 @@ static enum wa_status take_note(struct wa_sheet *sheet, uint32_t r, bool in_tabl
     return ok ? WA_OK : wa_fail_memory(error);
 }
 
+/* What stands under the last numbers of a table is no longer in it. */
+static size_t last_data_row(const struct wa_sheet *sheet, const struct wa_table_part *part)
+{
+    size_t r = part->end_row;
+    while (r > part->first_row && sheet->rows[r - 1].number_count < 2) {
+        r--;
+    }
+    return r > part->first_row ? r - 1 : part->end_row;
+}
+
 enum wa_status wa_notes_find(struct wa_sheet *sheet, const struct wa_table_part *tables,
                              size_t table_count, struct wa_found_notes *notes,
                              struct wa_error *error)
 {
     size_t table = 0;
+    size_t last_data = 0;
+    const struct wa_table_part *last_part = NULL;
     for (uint32_t r = 0; r < sheet->row_count; r++) {
         struct wa_row *row = &sheet->rows[r];
         while (table < table_count && r >= tables[table].end_row) {
             table++;
         }
         const struct wa_table_part *part = table < table_count ? &tables[table] : NULL;
+        if (part != NULL && part != last_part) {
+            last_part = part;
+            last_data = last_data_row(sheet, part);
+        }
         bool in_header = part != NULL && part->header_row != SIZE_MAX && r >= part->header_row &&
                          r < part->header_end;
-        bool in_table = part != NULL && r >= part->first_row;
+        bool in_table = part != NULL && r >= part->first_row && r <= last_data;
         bool numbers = row->kind == WA_ROW_NUMBERS && in_table && row->number_count >= 2;
         if (in_header) {
             row->used = true;

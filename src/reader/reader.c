@@ -72,6 +72,14 @@ static enum wa_status read_tables(struct wa_reading *reading, struct wa_error *e
     }
     enum wa_status status = wa_tables_find(sheet, &reading->tables, &reading->table_count, error);
     if (status == WA_OK && reading->table_count == 0) {
+        status = wa_reader_rebuild(sheet, &reading->decoded, &reading->remark, error);
+        if (status == WA_OK && reading->remark != NULL) {
+            free(reading->tables);
+            reading->tables = NULL;
+            status = wa_tables_find(sheet, &reading->tables, &reading->table_count, error);
+        }
+    }
+    if (status == WA_OK && reading->table_count == 0) {
         return fail_no_table(sheet, error);
     }
     if (status == WA_OK) {
@@ -119,6 +127,9 @@ enum wa_status wa_read_memory(const char *bytes, size_t size, const char *name,
                        WA_FILE_LIMIT >> 20);
     }
     enum wa_status status = wa_reader_decode(bytes, size, name, &reading.decoded, error);
+    if (status == WA_OK && wa_reader_strip_markup(&reading.decoded)) {
+        reading.markup = true;
+    }
     if (status == WA_OK) {
         status = wa_sheet_fill(&reading.sheet, &reading.decoded, error);
     }

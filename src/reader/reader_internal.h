@@ -79,6 +79,9 @@ struct wa_cell_value {
     bool three_after; /**< a mark followed by exactly three digits, none else: could be 1,234 */
 };
 
+/** Whether a cell is a number, even one that cannot be used for its thousands separator. */
+bool wa_cell_is_numeric(const struct wa_cell_value *value);
+
 struct wa_cell_value wa_cell_parse(const char *text, size_t length);
 
 /* --- sheet ---------------------------------------------------------------------------------- */
@@ -138,6 +141,22 @@ const char *wa_sheet_cell(const struct wa_sheet *sheet, const struct wa_row *row
 struct wa_cell_value wa_sheet_value(const struct wa_sheet *sheet, const struct wa_row *row,
                                     size_t column);
 
+/* --- tables that are not rows ---------------------------------------------------------------- */
+
+/**
+ * Replace the tags of a page by tabs and line ends, in place.
+ * @return whether the text was a table in markup
+ */
+bool wa_reader_strip_markup(struct wa_decoded *decoded);
+
+/**
+ * Write a table on its side, or one number a line, out again as rows, and read those into the
+ * sheet; rows keep the line of the file they came from.
+ * @param[out] remark  sentence on what was done, NULL when nothing was
+ */
+enum wa_status wa_reader_rebuild(struct wa_sheet *sheet, struct wa_decoded *decoded,
+                                 const char **remark, struct wa_error *error);
+
 /* --- columns -------------------------------------------------------------------------------- */
 
 enum wa_role {
@@ -155,9 +174,11 @@ struct wa_header {
     enum wa_role role;
     enum wa_unit unit;
     bool increment, total, burette; /**< words on how the volume counts */
+    bool added;                     /**< says what was added, as totals do */
     bool second;                    /**< a second electrode */
     bool computed;                  /**< calculated or smoothed, not measured */
     bool weak;                      /**< the role is a guess from a single letter */
+    bool equivalents;               /**< equivalents of titrant, not a volume */
 };
 
 struct wa_header wa_header_parse(const char *text, size_t length);
@@ -179,6 +200,7 @@ struct wa_table_part {
     size_t header_end; /**< one past the last header row */
     struct wa_column columns[WA_COLUMNS_MAX];
     size_t column_count;
+    int label_column; /**< tells runs apart, such as "sample"; -1 when there is none */
 };
 
 /** Which columns make one run. */
@@ -191,8 +213,8 @@ struct wa_column_choice {
 #define WA_CHOICES_MAX 32
 
 /** Find the header rows and the tables under them. */
-enum wa_status wa_tables_find(const struct wa_sheet *sheet, struct wa_table_part **tables,
-                              size_t *count, struct wa_error *error);
+enum wa_status wa_tables_find(struct wa_sheet *sheet, struct wa_table_part **tables, size_t *count,
+                              struct wa_error *error);
 
 /**
  * Choose the columns of each run of a table.
@@ -232,6 +254,7 @@ struct wa_raw {
     struct wa_point point; /**< volume_mL holds the volume as written, in mL, before totals */
     uint32_t row;          /**< index into sheet.rows */
     bool plus;             /**< the volume was written with a plus sign */
+    bool new_label;        /**< the column that tells runs apart has another text here */
     bool after_words;      /**< rows of words or blanks stand above it */
     const char *wrong;     /**< why it is not used, NULL when it is */
     bool impossible;       /**< it cannot be right, as against merely incomplete */
@@ -258,6 +281,7 @@ enum wa_status wa_screen_readings(struct wa_raw *raw, size_t count, enum wa_read
 
 /* --- runs ----------------------------------------------------------------------------------- */
 
+#define WA_TABLES_MAX 1000
 #define WA_RUNS_MAX 200 /* more runs in one file are not a titration's table */
 
 /** Where in the sheet a run came from. */
@@ -278,6 +302,8 @@ struct wa_reading {
     const struct wa_reader_options *options;
     struct wa_run_list list; /**< grown to WA_RUNS_MAX at once */
     struct wa_span spans[WA_RUNS_MAX];
+    const char *remark;      /**< on a table that had to be written out again, or NULL */
+    bool markup;             /**< the file was a page's markup */
     struct wa_error refusal; /**< why the first table that is no titration is none */
 };
 

@@ -15,6 +15,9 @@ static bool begins_again(const struct wa_raw *raw, size_t count, size_t first, s
     if (i < first + WA_POINTS_NEEDED || i + WA_POINTS_NEEDED > count) {
         return false;
     }
+    if (raw[i].new_label) {
+        return true;
+    }
     double start = raw[first].point.volume_mL;
     double away = fabs(raw[i].point.volume_mL - start);
     double before = fabs(raw[i - 1].point.volume_mL - start);
@@ -223,6 +226,23 @@ static enum wa_status keep_points(struct making *making, struct wa_error *error)
     return WA_OK;
 }
 
+/* Rank correlation of reading and order (Kendall 1938) on points spread over the run: a curve that
+ * rises or falls is near 1 or -1 however noisy, numbers without order are near 0. */
+static double trend_of(const struct wa_run *run)
+{
+    size_t stride = run->point_count / 150 + 1;
+    long concordant = 0;
+    long discordant = 0;
+    for (size_t i = 0; i < run->point_count; i += stride) {
+        for (size_t k = i + stride; k < run->point_count; k += stride) {
+            concordant += run->points[k].reading > run->points[i].reading;
+            discordant += run->points[k].reading < run->points[i].reading;
+        }
+    }
+    long pairs = concordant + discordant;
+    return pairs > 0 ? (double)(concordant - discordant) / (double)pairs : 0;
+}
+
 /* Too few points, or a reading or volume that never changes, is no titration. */
 static enum wa_status judge_points(const struct making *making, struct wa_error *error)
 {
@@ -250,6 +270,12 @@ static enum wa_status judge_points(const struct making *making, struct wa_error 
                        "The %s never changes (%g to %g), so there is no curve to read; check the "
                        "column and the electrode.",
                        pH ? "pH" : "potential", low, high);
+    }
+    if (run->point_count >= 8 && fabs(trend_of(run)) < 0.25) {
+        return wa_fail(error, WA_ERROR_INPUT, name, line,
+                       "The %s neither rises nor falls with the volume, so this is not a "
+                       "titration curve; check which columns hold volume and reading.",
+                       pH ? "pH" : "potential");
     }
     double span = run->points[run->point_count - 1].volume_mL - run->points[0].volume_mL;
     if (!(span > 0)) {
@@ -285,7 +311,13 @@ static enum wa_status say_assumptions(struct making *making, struct wa_error *er
     struct wa_run *run = &making->run;
     const struct wa_raw_list *list = making->list;
     enum wa_status status = WA_OK;
-    if (list->volume_unit_assumed) {
+    const struct wa_column *volume = &making->table->columns[making->choice->volume];
+    if (volume->header.equivalents) {
+        status = wa_run_remark(run, error,
+                               "The column '%s' counts equivalents; they are treated as if they "
+                               "were mL, so volumes and amounts mean nothing here.",
+                               volume->text);
+    } else if (list->volume_unit_assumed) {
         status = wa_run_remark(run, error, "The volume has no unit; mL is assumed.");
     }
     if (status == WA_OK && list->reading_unit_assumed) {
@@ -367,12 +399,50 @@ static enum wa_status finish_run(struct making *making, size_t beside, struct wa
     return status;
 }
 
-static enum wa_status runs_of_choice(struct wa_reading *reading, const struct wa_table_part *table,
-                                     const struct wa_column_choice *choice, bool several,
-                                     size_t beside, const char *remark, struct wa_error *error)
+/* Choices [0, joined) are one curve that goes on in further columns. */
+static enum wa_status collect_all(const struct wa_reading *reading,
+                                  const struct wa_table_part *table,
+                                  const struct wa_column_choice *choices, size_t joined,
+                                  bool several, struct wa_raw_list *list, struct wa_error *error)
+{
+    enum wa_status status = WA_OK;
+    for (size_t i = 0; status == WA_OK && i < joined; i++) {
+        status = wa_raw_collect(&reading->sheet, table, &choices[i], several, list, error);
+    }
+    return status;
+}
+
+static enum wa_status say_first(struct making *making, const char *remark, size_t joined,
+                                struct wa_error *error)
+{
+    const struct wa_reading *reading = making->reading;
+    enum wa_status status = WA_OK;
+    if (remark != NULL) {
+        status = wa_run_remark(&making->run, error, "%s", remark);
+    }
+    if (status == WA_OK && reading->remark != NULL) {
+        status = wa_run_remark(&making->run, error, "%s", reading->remark);
+    }
+    if (status == WA_OK && reading->markup) {
+        status = wa_run_remark(&making->run, error,
+                               "The file is the markup of a page; lines count the rows of its "
+                               "tables.");
+    }
+    if (status == WA_OK && joined > 1) {
+        status = wa_run_remark(&making->run, error,
+                               "The curve goes on in further columns of the table; they are read "
+                               "one after the other.");
+    }
+    return status;
+}
+
+static enum wa_status runs_of_choices(struct wa_reading *reading, const struct wa_table_part *table,
+                                      const struct wa_column_choice *choices, size_t joined,
+                                      bool several, size_t beside, const char *remark,
+                                      struct wa_error *error)
 {
     struct wa_raw_list list = {0};
-    enum wa_status status = wa_raw_collect(&reading->sheet, table, choice, several, &list, error);
+    enum wa_status status = collect_all(reading, table, choices, joined, several, &list, error);
     struct wa_raw *dropped = malloc((list.count + 1) * sizeof *dropped);
     if (status == WA_OK && dropped == NULL) {
         status = wa_fail_memory(error);
@@ -382,15 +452,13 @@ static enum wa_status runs_of_choice(struct wa_reading *reading, const struct wa
         struct making making = {
             .reading = reading,
             .table = table,
-            .choice = choice,
+            .choice = choices,
             .list = &list,
             .raw = list.raw + first,
             .count = end - first,
             .dropped = dropped,
         };
-        if (remark != NULL) {
-            status = wa_run_remark(&making.run, error, "%s", remark);
-        }
+        status = say_first(&making, remark, joined, error);
         if (status == WA_OK) {
             status = finish_run(&making, beside, error);
         }
@@ -400,6 +468,30 @@ static enum wa_status runs_of_choice(struct wa_reading *reading, const struct wa
     free(dropped);
     free(list.raw);
     return status;
+}
+
+/* How many of the choices go on where the one before ended, in volume columns of their own. */
+static size_t choices_that_go_on(const struct wa_table_part *table,
+                                 const struct wa_column_choice *choices, size_t count)
+{
+    size_t joined = 1;
+    const struct wa_column *lead = &table->columns[choices[0].volume];
+    double direction = lead->last - lead->first;
+    for (; joined < count; joined++) {
+        const struct wa_column_choice *before = &choices[joined - 1];
+        const struct wa_column_choice *next = &choices[joined];
+        const struct wa_column *volume = &table->columns[next->volume];
+        const struct wa_column *reading = &table->columns[next->reading];
+        const struct wa_column *reading_before = &table->columns[before->reading];
+        double gap = volume->first - table->columns[before->volume].last;
+        if (next->volume == before->volume || next->kind != before->kind ||
+            !(gap * direction > 0) ||
+            fabs(reading->first - reading_before->last) >=
+                fabs(reading->first - reading_before->first)) {
+            break;
+        }
+    }
+    return joined;
 }
 
 enum wa_status wa_runs_of_table(struct wa_reading *reading, size_t t, struct wa_error *error)
@@ -419,8 +511,11 @@ enum wa_status wa_runs_of_table(struct wa_reading *reading, size_t t, struct wa_
     if (remark.length > 0) {
         remark.bytes[remark.length - 1] = '\0';
     }
-    for (size_t i = 0; status == WA_OK && i < count; i++) {
-        status = runs_of_choice(reading, table, &choices[i], count > 1, i, remark.bytes, error);
+    size_t joined = 1;
+    for (size_t i = 0; status == WA_OK && i < count; i += joined) {
+        joined = choices_that_go_on(table, &choices[i], count - i);
+        status =
+            runs_of_choices(reading, table, &choices[i], joined, count > 1, i, remark.bytes, error);
     }
     wa_text_free(&remark);
     return status;

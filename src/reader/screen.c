@@ -44,21 +44,21 @@ static double outside(double left, double middle, double right)
     return fmax(fmax(low - middle, middle - high), 0);
 }
 
-/* Noise from the second differences of readings, robust because it is a median (MAD; Rousseeuw
- * and Croux 1993): curvature only makes it larger, which is the safe side. */
+/* How far readings usually lie outside the span of their neighbours: the upper quartile, which is
+ * nothing for a clean curve, however few its points, and about the noise for a noisy one. */
 static double noise_of(const double *reading, size_t count)
 {
     double sizes[SAMPLE];
     size_t used = 0;
     size_t stride = count / SAMPLE + 1;
     for (size_t i = 1; i + 1 < count && used < SAMPLE; i += stride) {
-        sizes[used++] = fabs(reading[i] - 0.5 * (reading[i - 1] + reading[i + 1]));
+        sizes[used++] = outside(reading[i - 1], reading[i], reading[i + 1]);
     }
     if (used == 0) {
         return 0;
     }
     qsort(sizes, used, sizeof sizes[0], compare_doubles);
-    return 1.4826 * sizes[used / 2];
+    return sizes[used * 3 / 4];
 }
 
 /* Spread of the readings around i, itself left out. */
@@ -79,7 +79,7 @@ static double spread_around(const double *reading, size_t count, size_t i)
 static bool is_slip(const double *reading, size_t count, size_t i, double noise, double unit)
 {
     double out = outside(reading[i - 1], reading[i], reading[i + 1]);
-    if (out <= 1.0 * unit || out <= 12 * noise) {
+    if (out <= unit || out <= 6 * noise) {
         return false;
     }
     /* The neighbour may be the slip: it then lies outside its own neighbours still farther. */

@@ -99,13 +99,26 @@ static bool is_comment(const char *line, size_t length, char delimiter, size_t *
     return !(at < length && delimiter != ' ' && line[at] == delimiter);
 }
 
+/* "-----", "====", ":--:": a line drawn under a header. */
+static bool is_rule(const struct wa_sheet *sheet, const struct wa_row *row, size_t column)
+{
+    size_t length;
+    const char *text = wa_sheet_cell(sheet, row, column, &length);
+    for (size_t i = 0; i < length; i++) {
+        if (strchr("-=_+*:|~.", text[i]) == NULL) {
+            return false;
+        }
+    }
+    return true;
+}
+
 static void classify(struct wa_sheet *sheet, struct wa_row *row, bool comment)
 {
     size_t filled = 0;
     for (size_t i = 0; i < row->cell_count; i++) {
         struct wa_cell_value value = wa_sheet_value(sheet, row, i);
-        filled += value.kind != WA_CELL_EMPTY;
-        row->number_count = (uint16_t)(row->number_count + (value.kind == WA_CELL_NUMBER));
+        filled += value.kind != WA_CELL_EMPTY && !is_rule(sheet, row, i);
+        row->number_count = (uint16_t)(row->number_count + wa_cell_is_numeric(&value));
     }
     if (comment) {
         row->kind = WA_ROW_COMMENT;

@@ -112,7 +112,11 @@ static bool header_at(const struct wa_sheet *sheet, size_t r, size_t *end)
     }
     roles_of(sheet, r, r + 1, &volume, &reading);
     bool below = r + 1 < sheet->row_count;
-    *end = r + 1 + (below && is_unit_row(sheet, r + 1));
+    bool units = below && is_unit_row(sheet, r + 1);
+    *end = r + 1 + units;
+    if (units && (volume || reading)) {
+        roles_of(sheet, r, r + 2, &volume, &reading);
+    }
     if (volume && reading) {
         return numbers_follow(sheet, *end);
     }
@@ -192,6 +196,36 @@ static void set_header_text(const struct wa_sheet *sheet, struct wa_table_part *
     column->text[shown] = '\0';
 }
 
+/* Words set apart by single spaces may be cut wrongly. When there are more of them than columns,
+ * the named ones are taken in order if they are as many as the columns; else none is trusted. */
+static void settle_loose_header(const struct wa_sheet *sheet, struct wa_table_part *table)
+{
+    size_t data_columns = 0;
+    for (size_t r = table->first_row; r < table->end_row; r++) {
+        const struct wa_row *row = &sheet->rows[r];
+        if (row->kind == WA_ROW_NUMBERS && row->cell_count > data_columns) {
+            data_columns = row->cell_count;
+        }
+    }
+    if (sheet->delimiter != ' ' || table->column_count <= data_columns || data_columns == 0) {
+        return;
+    }
+    size_t named = 0;
+    for (size_t c = 0; c < table->column_count; c++) {
+        named += table->columns[c].header.role != WA_ROLE_UNKNOWN;
+    }
+    size_t to = 0;
+    for (size_t c = 0; c < table->column_count && named == data_columns; c++) {
+        if (table->columns[c].header.role != WA_ROLE_UNKNOWN) {
+            table->columns[to++] = table->columns[c];
+        }
+    }
+    for (size_t c = to; c < table->column_count; c++) {
+        table->columns[c] = (struct wa_column){0};
+    }
+    table->column_count = data_columns < WA_COLUMNS_MAX ? data_columns : WA_COLUMNS_MAX;
+}
+
 static void count_value(struct wa_column *column, const struct wa_cell_value *value)
 {
     double x = value->value;
@@ -224,6 +258,9 @@ static void fill_columns(const struct wa_sheet *sheet, struct wa_table_part *tab
     for (size_t c = 0; has_header && c < table->column_count; c++) {
         set_header_text(sheet, table, c);
     }
+    if (has_header) {
+        settle_loose_header(sheet, table);
+    }
     for (size_t r = table->first_row; r < table->end_row; r++) {
         const struct wa_row *row = &sheet->rows[r];
         if (row->kind != WA_ROW_NUMBERS) {
@@ -233,6 +270,8 @@ static void fill_columns(const struct wa_sheet *sheet, struct wa_table_part *tab
             struct wa_cell_value value = wa_sheet_value(sheet, row, c);
             if (value.kind == WA_CELL_NUMBER) {
                 count_value(&table->columns[c], &value);
+            } else if (value.kind == WA_CELL_GROUPED) {
+                table->columns[c].numbers++;
             }
         }
     }
@@ -281,8 +320,66 @@ static bool add_headless(struct table_list *list, const struct wa_sheet *sheet, 
                      end);
 }
 
-enum wa_status wa_tables_find(const struct wa_sheet *sheet, struct wa_table_part **tables,
-                              size_t *count, struct wa_error *error)
+static int first_named(const struct wa_table_part *table, bool volume)
+{
+    for (size_t c = 0; c < table->column_count; c++) {
+        enum wa_role role = table->columns[c].header.role;
+        bool wanted = volume ? role == WA_ROLE_VOLUME : role == WA_ROLE_PH || role == WA_ROLE_MV;
+        if (wanted && table->columns[c].numbers > 0) {
+            return (int)c;
+        }
+    }
+    return -1;
+}
+
+/* A table under the same header that goes on where the one above ended is the same run, cut for a
+ * page or a notebook's column. */
+static bool goes_on(const struct wa_table_part *table, const struct wa_table_part *next)
+{
+    int v = first_named(table, true);
+    int r = first_named(table, false);
+    if (v < 0 || r < 0 || table->column_count != next->column_count ||
+        table->header_row == SIZE_MAX || next->header_row == SIZE_MAX) {
+        return false;
+    }
+    for (size_t c = 0; c < table->column_count; c++) {
+        if (strcmp(table->columns[c].text, next->columns[c].text) != 0) {
+            return false;
+        }
+    }
+    const struct wa_column *volume = &table->columns[v];
+    const struct wa_column *reading = &table->columns[r];
+    const struct wa_column *next_volume = &next->columns[v];
+    const struct wa_column *next_reading = &next->columns[r];
+    double direction = volume->last - volume->first;
+    return next_volume->numbers > 0 && next_reading->numbers > 0 &&
+           (next_volume->first - volume->last) * direction > 0 &&
+           (next_volume->last - next_volume->first) * direction >= 0 &&
+           fabs(next_reading->first - reading->last) < fabs(next_reading->first - reading->first);
+}
+
+static void join_tables(struct wa_sheet *sheet, struct table_list *list)
+{
+    size_t to = 0;
+    for (size_t t = 1; t < list->count; t++) {
+        struct wa_table_part *above = &list->tables[to];
+        const struct wa_table_part *table = &list->tables[t];
+        if (!goes_on(above, table)) {
+            list->tables[++to] = *table;
+            continue;
+        }
+        for (size_t r = table->header_row; r < table->header_end; r++) {
+            sheet->rows[r].used = true;
+        }
+        above->end_row = table->end_row;
+        memset(above->columns, 0, sizeof above->columns);
+        fill_columns(sheet, above);
+    }
+    list->count = list->count > 0 ? to + 1 : 0;
+}
+
+enum wa_status wa_tables_find(struct wa_sheet *sheet, struct wa_table_part **tables, size_t *count,
+                              struct wa_error *error)
 {
     struct table_list list = {0};
     size_t from = 0;
@@ -300,6 +397,12 @@ enum wa_status wa_tables_find(const struct wa_sheet *sheet, struct wa_table_part
         } else {
             ok = add_headless(&list, sheet, from, r, at_end ? 3 : WA_POINTS_NEEDED);
         }
+        if (list.count > WA_TABLES_MAX) {
+            free(list.tables);
+            return wa_fail(error, WA_ERROR_INPUT, sheet->name, (long)sheet->rows[header].line,
+                           "More than %d tables in one file; give them in several files.",
+                           WA_TABLES_MAX);
+        }
         header = r;
         header_end = end;
         from = end;
@@ -309,6 +412,7 @@ enum wa_status wa_tables_find(const struct wa_sheet *sheet, struct wa_table_part
         free(list.tables);
         return wa_fail_memory(error);
     }
+    join_tables(sheet, &list);
     *tables = list.tables;
     *count = list.count;
     return WA_OK;

@@ -156,7 +156,7 @@ static struct wa_volume_rule rising_rule(const struct wa_raw *raw, size_t count,
     if (raw[0].point.volume_mL == 0 || column->header.total) {
         return rule;
     }
-    if (starts_like_total(raw, count, steps->typical)) {
+    if (column->header.added || starts_like_total(raw, count, steps->typical)) {
         rule.remark = "The volumes do not start at zero and are taken as running totals; if they "
                       "are burette readings, note 'volume reading: burette'.";
         return rule;
@@ -268,7 +268,8 @@ enum wa_status wa_volume_totals(struct wa_raw *raw, size_t count, struct wa_volu
     }
     double first = rule.kind == WA_VOLUME_BURETTE && start < count ? raw[start].point.volume_mL : 0;
     for (size_t i = 0; i < count; i++) {
-        raw[i].point.volume_mL = rule.direction * (raw[i].point.volume_mL - first);
+        /* Adding zero turns a negative zero into a plain one. */
+        raw[i].point.volume_mL = rule.direction * (raw[i].point.volume_mL - first) + 0.0;
     }
     return WA_OK;
 }
