@@ -16,8 +16,8 @@ void print_species_plot(FILE *stream, const struct acid_page *page)
     struct wa_system system;
     double pK[WA_PROTONS_MAX];
     struct wa_medium medium = wa_medium_at(page->temperature_C);
-    double log10_gamma =
-        wa_davies_log10_gamma(page->ionic_strength, medium.debye_huckel_A, WA_DAVIES_COEFFICIENT);
+    double gamma = pow(10.0, wa_davies_log10_gamma(page->ionic_strength, medium.debye_huckel_A,
+                                                   WA_DAVIES_COEFFICIENT));
     if (acid->step_count == 0) {
         return;
     }
@@ -31,7 +31,7 @@ void print_species_plot(FILE *stream, const struct acid_page *page)
     }
     for (int column = 0; column < PLOT_COLUMNS; column++) {
         double fraction[WA_PROTONS_MAX + 1];
-        wa_system_fractions(&system, column * PH_PER_COLUMN, log10_gamma, fraction);
+        wa_system_fractions(&system, pow(10.0, -column * PH_PER_COLUMN), gamma, fraction);
         for (int species = 0; species <= acid->step_count; species++) {
             long row = lround((1.0 - fraction[species]) * (PLOT_ROWS - 1));
             /* The bottom line would be all marks: species that are not there are left out. */
