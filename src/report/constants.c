@@ -17,6 +17,38 @@ static void fill_volume(struct report_table *table, size_t column,
     }
 }
 
+/* The uncertainty of a point's inflection stands with the curve's own analysis. */
+static double inflection_u(const struct wa_result *result, double volume_mL)
+{
+    const struct wa_curve *curve =
+        result->curves != NULL && result->runs.count > 0 ? &result->curves[0] : NULL;
+    for (size_t i = 0; curve != NULL && i < curve->inflection_count; i++) {
+        if (fabs(curve->inflections[i].volume_mL - volume_mL) < 1e-6) {
+            return curve->inflections[i].u_mL;
+        }
+    }
+    return NAN;
+}
+
+static void fill_inflection(struct report_table *table, const struct wa_result *result,
+                            const struct wa_result_equivalence *point)
+{
+    if (!point->inflection_seen || !isfinite(point->inflection_mL)) {
+        report_cell(table, 5, "none seen");
+        report_cell(table, 6, "-");
+        return;
+    }
+    double u = inflection_u(result, point->inflection_mL);
+    char figure[64];
+    report_quantity(figure, sizeof figure, point->inflection_mL, u);
+    if (u > 0.0) {
+        report_cell(table, 5, "%s", figure);
+    } else {
+        report_cell(table, 5, "%.2f", point->inflection_mL);
+    }
+    report_cell(table, 6, "%.1f", point->significance);
+}
+
 static void write_points(struct report_writer *writer, const struct wa_result *result)
 {
     struct report_table table = {0};
@@ -40,13 +72,7 @@ static void write_points(struct report_writer *writer, const struct wa_result *r
         }
         report_cell(&table, 3, point->protons > 0 ? "%d" : "not known", point->protons);
         report_cell(&table, 4, point->from_fit ? "fit" : "curve");
-        if (point->inflection_seen && isfinite(point->inflection_mL)) {
-            report_cell(&table, 5, "%.6g", point->inflection_mL);
-            report_cell(&table, 6, "%.1f", point->significance);
-        } else {
-            report_cell(&table, 5, "none seen");
-            report_cell(&table, 6, "-");
-        }
+        fill_inflection(&table, result, point);
     }
     report_table_draw(writer, &table);
 }

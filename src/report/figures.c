@@ -31,6 +31,8 @@ void report_deviation(char *text, size_t size, double deviation)
 {
     if (!isfinite(deviation)) {
         snprintf(text, size, "%s", "");
+    } else if (fabs(deviation) < 0.05) {
+        snprintf(text, size, "0.0 u");
     } else if (fabs(deviation) < 100.0) {
         snprintf(text, size, "%+.1f u", deviation);
     } else {

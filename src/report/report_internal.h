@@ -70,7 +70,8 @@ void report_row(struct report_table *table);
 void report_cell(struct report_table *table, size_t column, const char *format, ...)
     WA_PRINTF(3, 4);
 
-/** Draw the table indented by two, or row by row as a list where it would not fit; then free it. */
+/** Draw the table indented by two, its first cells folded where it would be too wide, or row by row
+ * as a list where that does not help; then free it. */
 void report_table_draw(struct report_writer *writer, struct report_table *table);
 
 /** "4.756 ± 0.012", the value alone when u is not known, "not known" when the value is not. */

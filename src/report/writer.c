@@ -202,6 +202,8 @@ void report_cell(struct report_table *table, size_t column, const char *format, 
     }
 }
 
+#define FIRST_CELL_LEAST 16 /* columns to which the first cells of a table may be folded */
+
 static void draw_as_list(struct report_writer *writer, const struct report_table *table)
 {
     for (size_t row = 1; row < table->row_count; row++) {
@@ -215,18 +217,36 @@ static void draw_as_list(struct report_writer *writer, const struct report_table
     }
 }
 
+/* The next line of a first cell that may be folded, drawn; the rest is left in `cell`. */
+static size_t draw_first(struct wa_text *text, const char **cell, size_t width, size_t indent)
+{
+    size_t piece = piece_that_fits(*cell, width - indent);
+    size_t start = text->length;
+    wa_text_append(text, "%*s", (int)(2 + indent), "");
+    wa_text_append_bytes(text, *cell, piece);
+    for (*cell += piece; **cell == ' ';) {
+        ++*cell;
+    }
+    return text->failed ? 0 : 2 + width - report_columns(text->bytes + start);
+}
+
 static void draw_row(struct report_writer *writer, const struct report_table *table, size_t row,
                      const size_t *widths)
 {
     struct wa_text *text = &writer->text;
-    size_t pending = 2;
-    for (size_t column = 0; column < table->column_count; column++) {
+    const char *first = table->rows[row][0];
+    size_t pending = draw_first(text, &first, widths[0], 0) + 2;
+    for (size_t column = 1; column < table->column_count; column++) {
         const char *cell = table->rows[row][column];
         if (cell[0] != '\0') {
             wa_text_append(text, "%*s%s", (int)pending, "", cell);
             pending = 0;
         }
         pending += widths[column] - report_columns(cell) + 2;
+    }
+    while (*first != '\0') {
+        wa_text_append_bytes(text, "\n", 1);
+        draw_first(text, &first, widths[0], 2);
     }
     wa_text_append_bytes(text, "\n", 1);
 }
@@ -241,6 +261,10 @@ void report_table_draw(struct report_writer *writer, struct report_table *table)
             widths[column] = columns > widths[column] ? columns : widths[column];
         }
         total += widths[column] + 2;
+    }
+    if (total > writer->columns && total - widths[0] + FIRST_CELL_LEAST <= writer->columns) {
+        widths[0] -= total - writer->columns;
+        total = writer->columns;
     }
     if (table->failed) {
         writer->text.failed = true;
