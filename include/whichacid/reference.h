@@ -10,6 +10,14 @@
 #define WA_PARTS_MAX 6     /**< most acid systems in one form */
 #define WA_PART_WATER (-1) /**< part.acid of the key `water`: brings hydroxide, no system */
 
+/** What a published constant holds: activities, concentrations, or the activity of the hydrogen ion
+ * (read on a pH meter) with concentrations of the others. */
+enum wa_constant_kind {
+    WA_CONSTANT_THERMODYNAMIC,
+    WA_CONSTANT_CONCENTRATION,
+    WA_CONSTANT_MIXED,
+};
+
 /** One row of constants.csv as written. */
 struct wa_constant_row {
     int acid; /**< index into table.acids */
@@ -18,7 +26,8 @@ struct wa_constant_row {
     double u;
     double temperature_C;
     double ionic_strength;
-    bool thermodynamic;
+    enum wa_constant_kind kind;
+    bool thermodynamic;   /**< kind is WA_CONSTANT_THERMODYNAMIC */
     double enthalpy;      /**< kJ/mol, NaN when unknown */
     double heat_capacity; /**< J/(K mol), NaN when unknown */
     const char *source;   /**< key in sources.csv, or "from memory" */
@@ -242,13 +251,15 @@ const char *wa_table_hazard_sentence(const struct wa_table *table, const char *c
 double wa_step_pKa_at(const struct wa_step *step, double temperature_C, double *u);
 
 /**
- * Thermodynamic pK from a concentration constant pKc = -lg([H][A]/[HA]) by the Davies equation.
+ * Thermodynamic pK from a constant at some ionic strength by the Davies equation.
+ * @param[in]  pK              concentration constant -lg([H][A]/[HA]), or mixed constant
+ *                             -lg(a(H)[A]/[HA])
  * @param[in]  charge          of the species that loses the proton
  * @param[in]  ionic_strength  mol/L at which the constant holds
  * @param[out] u               standard uncertainty of the conversion alone, may be NULL
  */
-double wa_constant_to_zero_ionic_strength(double pKc, int charge, double ionic_strength,
-                                          double temperature_C, double *u);
+double wa_constant_to_zero_ionic_strength(double pK, enum wa_constant_kind kind, int charge,
+                                          double ionic_strength, double temperature_C, double *u);
 
 /** What a table holds, counted. */
 struct wa_table_statistics {

@@ -82,6 +82,13 @@ static void print_elsewhere(FILE *stream, const struct acid_page *page)
     }
 }
 
+static const char *constant_words(enum wa_constant_kind kind)
+{
+    return kind == WA_CONSTANT_CONCENTRATION ? " (concentration constant)"
+           : kind == WA_CONSTANT_MIXED       ? " (mixed constant)"
+                                             : "";
+}
+
 static void print_rows(FILE *stream, const struct acid_page *page)
 {
     const struct wa_acid *acid = &page->table->acids[page->acid];
@@ -91,10 +98,9 @@ static void print_rows(FILE *stream, const struct acid_page *page)
         char value[48];
         char text[512];
         wa_quantity_format(value, sizeof value, row->pKa, row->u);
-        int used =
-            snprintf(text, sizeof text, "%s at %g °C, I = %g%s, %s%s", value, row->temperature_C,
-                     row->ionic_strength, row->thermodynamic ? "" : " (concentration constant)",
-                     row->source, row->from_user ? " (yours)" : "");
+        int used = snprintf(text, sizeof text, "%s at %g °C, I = %g%s, %s%s", value,
+                            row->temperature_C, row->ionic_strength, constant_words(row->kind),
+                            row->source, row->from_user ? " (yours)" : "");
         if (row->used && fabs(row->pKa_standard - row->pKa) > 0.0005 && used > 0 &&
             (size_t)used < sizeof text) {
             used += snprintf(text + used, sizeof text - (size_t)used, "; brought to %.3f ± %.3f",

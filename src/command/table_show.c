@@ -157,6 +157,13 @@ static json_t *steps_json(const struct acid_page *page)
     return steps;
 }
 
+static const char *constant_kind_word(enum wa_constant_kind kind)
+{
+    return kind == WA_CONSTANT_CONCENTRATION ? "concentration"
+           : kind == WA_CONSTANT_MIXED       ? "mixed"
+                                             : "thermodynamic";
+}
+
 static json_t *constants_json(const struct acid_page *page)
 {
     const struct wa_acid *acid = &page->table->acids[page->acid];
@@ -168,9 +175,8 @@ static json_t *constants_json(const struct acid_page *page)
             rows, json_pack("{s:i,s:f,s:f,s:f,s:f,s:s,s:b,s:f,s:s,s:s}", "step", row->step, "pKa",
                             row->pKa, "u", row->u, "temperature_C", row->temperature_C,
                             "ionic_strength", row->ionic_strength, "kind",
-                            row->thermodynamic ? "thermodynamic" : "concentration", "used",
-                            (int)row->used, "pKa_standard", row->pKa_standard, "source",
-                            row->source, "reference",
+                            constant_kind_word(row->kind), "used", (int)row->used, "pKa_standard",
+                            row->pKa_standard, "source", row->source, "reference",
                             source >= 0 ? page->table->sources[source].reference : row->source));
     }
     return rows;

@@ -198,14 +198,17 @@ static void check_form(struct check *check, const struct wa_form *form)
     check_hazards(check, form);
 }
 
-/* A registry number belongs to one form. Sorted by number, doubles stand side by side. */
+/* A registry number belongs to one form. Sorted by number, doubles stand side by side, the table's
+ * before the user's, so that the finding is put to the user's row. */
 static int compare_cas(const void *left, const void *right)
 {
-    const struct wa_form *const *first = left;
-    const struct wa_form *const *second = right;
-    int order = strcmp((*first)->cas, (*second)->cas);
-    return order != 0 ? order
-                      : ((*first)->line > (*second)->line) - ((*first)->line < (*second)->line);
+    const struct wa_form *first = *(const struct wa_form *const *)left;
+    const struct wa_form *second = *(const struct wa_form *const *)right;
+    int order = strcmp(first->cas, second->cas);
+    if (order == 0) {
+        order = (int)first->from_user - (int)second->from_user;
+    }
+    return order != 0 ? order : (first->line > second->line) - (first->line < second->line);
 }
 
 static void check_cas_doubles(struct check *check)
@@ -344,8 +347,8 @@ void wa_table_count(const struct wa_table *table, struct wa_table_statistics *st
         const struct wa_form *form = &table->forms[i];
         statistics->forms_with_cas += form->cas[0] != '\0';
         statistics->forms_with_hazards += form->hazards[0] != '\0';
-        statistics->forms_with_solubility += isfinite(form->solubility_mol_L);
-        statistics->forms_with_melting_point += isfinite(form->melting_point_C);
+        statistics->forms_with_solubility += isfinite(form->solubility_mol_L) ? 1U : 0U;
+        statistics->forms_with_melting_point += isfinite(form->melting_point_C) ? 1U : 0U;
         statistics->forms_of_several_parts += form->part_count > 1;
         statistics->forms_from_user += form->from_user;
     }

@@ -14,13 +14,16 @@
 #define OUT_OF_RANGE_U 0.2 /* the same beyond WA_DAVIES_LIMIT, where the equation does not hold */
 
 /* A concentration constant Kc = [H][A]/[HA] at ionic strength I and K = Kc γ(H) γ(A)/γ(HA), with
- * lg γ = z^2 g (Davies 1962), give pK = pKc + 2 g (z - 1) for HA of charge z. Its uncertainty is
- * that of the Davies coefficient and of the model itself. */
-double wa_constant_to_zero_ionic_strength(double pKc, int charge, double ionic_strength,
-                                          double temperature_C, double *u)
+ * lg γ = z^2 g (Davies 1962), give pK = pKc + 2 g (z - 1) for HA of charge z; a mixed constant,
+ * which holds the activity of H, pK = pKm + g (2 z - 1). The uncertainty is that of the Davies
+ * coefficient and of the model itself. */
+double wa_constant_to_zero_ionic_strength(double pK, enum wa_constant_kind kind, int charge,
+                                          double ionic_strength, double temperature_C, double *u)
 {
     struct wa_medium medium = wa_medium_at(temperature_C);
-    double weight = 2.0 * (charge - 1);
+    double weight = kind == WA_CONSTANT_CONCENTRATION ? 2.0 * (charge - 1)
+                    : kind == WA_CONSTANT_MIXED       ? 2.0 * charge - 1.0
+                                                      : 0.0;
     double at = wa_davies_log10_gamma(ionic_strength, medium.debye_huckel_A, WA_DAVIES_COEFFICIENT);
     double beside = wa_davies_log10_gamma(ionic_strength, medium.debye_huckel_A,
                                           WA_DAVIES_COEFFICIENT + WA_DAVIES_COEFFICIENT_U);
@@ -30,7 +33,7 @@ double wa_constant_to_zero_ionic_strength(double pKc, int charge, double ionic_s
     if (u != NULL) {
         *u = hypot(weight * (beside - at), model * fabs(weight) / 2.0);
     }
-    return pKc + weight * at;
+    return pK + weight * at;
 }
 
 double wa_step_pKa_at(const struct wa_step *step, double temperature_C, double *u)
@@ -106,8 +109,9 @@ static bool standardize_row(const struct wa_acid *acid, const struct wa_step *st
     row->pKa_standard = row->pKa;
     if (!row->thermodynamic && row->ionic_strength > 0.0) {
         double u;
-        row->pKa_standard = wa_constant_to_zero_ionic_strength(
-            row->pKa, acid->charge - (row->step - 1), row->ionic_strength, row->temperature_C, &u);
+        row->pKa_standard =
+            wa_constant_to_zero_ionic_strength(row->pKa, row->kind, acid->charge - (row->step - 1),
+                                               row->ionic_strength, row->temperature_C, &u);
         variance += u * u;
     }
     bool elsewhere = fabs(row->temperature_C - STANDARD_TEMPERATURE_C) > SAME_TEMPERATURE_K;

@@ -56,7 +56,8 @@ static void enter(struct loader *loader, const struct named *named, int index, c
         return;
     }
     /* A name taken from the table by a user's row is the user's affair. */
-    bool users = from_user(&loader->table, named->kind, held);
+    bool users = from_user(&loader->table, named->kind, held) &&
+                 !from_user(&loader->table, named->kind, index);
     struct name_owner owner = owner_of(&loader->table, named->kind, users ? held : index);
     struct name_owner holder = owner_of(&loader->table, named->kind, users ? index : held);
     const struct table_file place = {.name = owner.file, .kind = named->kind};

@@ -111,12 +111,14 @@ static bool read_kind(struct loader *loader, const struct table_file *file,
         }
         return true;
     }
-    if (strcasecmp(kind, "concentration") == 0) {
+    bool mixed = strcasecmp(kind, "mixed") == 0;
+    constant->kind = mixed ? WA_CONSTANT_MIXED : WA_CONSTANT_CONCENTRATION;
+    if (mixed || strcasecmp(kind, "concentration") == 0) {
         return true;
     }
     loader_problem(loader, file, row->line, CONSTANT_KIND, true,
-                   "'%.30s' is no kind of constant; 'thermodynamic' or 'concentration' is "
-                   "expected.",
+                   "'%.30s' is no kind of constant; 'thermodynamic', 'concentration' or 'mixed' "
+                   "(activity of H+, concentrations of the others) is expected.",
                    kind);
     return false;
 }

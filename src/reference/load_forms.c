@@ -193,7 +193,8 @@ static bool settle_formula(struct loader *loader, const struct table_file *file,
     if (!spectators.split) {
         loader_problem(loader, file, row->line, FORM_PARTS, false,
                        "What '%.60s' holds beside its parts (%s, charge %+d) is no ion that is "
-                       "known here; single charges are assumed for it.",
+                       "known here: check the counts of the parts, or bear that single charges "
+                       "are assumed for it.",
                        form->formula, spectators.remainder, spectators.charge);
     }
     return true;
