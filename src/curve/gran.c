@@ -14,11 +14,14 @@
 #include <math.h>
 #include <stdlib.h>
 
-enum { COLUMNS_MAX = 4, ROUNDS = 8 };
+enum { COLUMNS_MAX = 4, ROUNDS = 6 };
 
 /* Errors of the linear form itself (activity, electrode slope, hidden steps) grow with the distance
  * from the equivalence volume: this part of it. */
 static const double form_error = 0.02;
+
+/* Activity coefficient of the free ions; the lines' slopes are free, so that it hardly matters. */
+static const double free_gamma = 0.8;
 
 enum lines { LINES_BEFORE = 1, LINES_AFTER = 2, LINES_BOTH = 3 };
 
@@ -26,12 +29,16 @@ struct geometry {
     double previous, here, next; /* mL; next is NaN for the last jump */
     double exponent;             /* pH (pOH for an acid titrant) at the jump */
     double free_share;           /* how far free hydrogen ions stand for the acid before the jump */
+    double hidden;               /* part of the step taken by hidden earlier protons */
     double reach;                /* part of the step on both sides that is used */
+    double stretch;              /* electrode slope tried, 1 as a rule */
+    double carbonate_shift;      /* error tried in the carbonate's constants */
+    double saturation; /* exponent at which an unseen acid would take over, NaN for none */
 };
 
 struct gran_rows {
     double *storage;
-    double *volume, *exponent, *slope, *weight, *residual, *matrix;
+    double *volume, *exponent, *slope, *weight, *residual, *right, *left, *matrix;
     size_t capacity, count, columns;
     double coefficient[COLUMNS_MAX];
     double covariance[COLUMNS_MAX][2]; /* with Ve and with f */
@@ -40,7 +47,7 @@ struct gran_rows {
 static bool rows_new(struct gran_rows *rows, size_t capacity)
 {
     *rows = (struct gran_rows){.capacity = capacity};
-    rows->storage = malloc((capacity + 1) * (6 + COLUMNS_MAX) * sizeof(double));
+    rows->storage = malloc((capacity + 1) * (7 + COLUMNS_MAX) * sizeof(double));
     if (rows->storage == NULL) {
         return false;
     }
@@ -49,7 +56,9 @@ static bool rows_new(struct gran_rows *rows, size_t capacity)
     rows->slope = rows->exponent + capacity + 1;
     rows->weight = rows->slope + capacity + 1;
     rows->residual = rows->weight + capacity + 1;
-    rows->matrix = rows->residual + 2 * (capacity + 1);
+    rows->right = rows->residual + capacity + 1;
+    rows->left = rows->right + capacity + 1;
+    rows->matrix = rows->left + capacity + 1;
     return true;
 }
 
@@ -81,24 +90,42 @@ void curve_truncate(double centre, double width, double *mean, double *deviation
     *deviation = width * sqrt(fmax(1.0 - hazard * (hazard + ratio), 1e-4));
 }
 
+/* Acid's anion (or base's cation) at a point as part of the step: what was added, and what gave off
+ * its proton by itself. */
+static double bound_share(const struct curve_context *context, const struct geometry *at,
+                          double volume, double exponent)
+{
+    const double step = at->here - at->previous;
+    double formed = volume - at->previous;
+    if (isfinite(context->titrant) && !context->curve->in_mV) {
+        formed +=
+            pow(10.0, -exponent) / free_gamma * (context->start_volume + volume) / context->titrant;
+    }
+    const double share = (formed / step - at->hidden) / (1.0 - at->hidden);
+    return fmin(fmax(share, 0.0), 1.2);
+}
+
 static void regressors(const struct curve_context *context, const struct geometry *at,
                        enum lines lines, double volume, double exponent, double row[COLUMNS_MAX])
 {
-    const double step = at->here - at->previous;
-    const double distance = exponent - at->exponent;
+    const double distance = (exponent - at->exponent) * at->stretch;
+    const double free = (context->start_volume + volume) / (context->start_volume + at->here);
     size_t column = 0;
     row[column++] = 1.0;
-    row[column++] = context->titrant_is_base ? volume * curve_carbonate_unused(exponent) : 0.0;
+    row[column++] = context->titrant_is_base
+                        ? volume * curve_carbonate_unused(exponent + at->carbonate_shift)
+                        : 0.0;
     if (lines & LINES_BEFORE) {
-        const double bound = (volume - at->previous) / step;
-        const double free = (context->start_volume + volume) / (context->start_volume + at->here);
+        const double bound = bound_share(context, at, volume, exponent);
         row[column++] =
             -(free * at->free_share + bound * (1.0 - at->free_share)) * pow(10.0, -distance);
     }
     if (lines & LINES_AFTER) {
-        const double free = (context->start_volume + volume) / (context->start_volume + at->here);
-        const double bound = isnan(at->next) ? free : (at->next - volume) / (at->next - at->here);
-        row[column++] = bound * pow(10.0, distance);
+        double share = isnan(at->next) ? free : (at->next - volume) / (at->next - at->here);
+        if (!isnan(at->saturation)) {
+            share /= 1.0 + pow(10.0, exponent - at->saturation);
+        }
+        row[column++] = share * pow(10.0, distance);
     }
 }
 
@@ -133,7 +160,7 @@ static void gather(const struct curve_context *context, const struct geometry *a
 
 /* Weighted rows of the design, and the prior on the carbonate as one row more. */
 static void fill(const struct curve_context *context, const struct geometry *at, enum lines lines,
-                 struct gran_rows *rows, double *right)
+                 struct gran_rows *rows)
 {
     const double reading_u = context->curve->noise / context->per_decade;
     for (size_t i = 0; i < rows->count; i++) {
@@ -147,13 +174,13 @@ static void fill(const struct curve_context *context, const struct geometry *at,
         for (size_t j = 0; j < rows->columns; j++) {
             rows->matrix[i * rows->columns + j] = row[j] * rows->weight[i];
         }
-        right[i] = rows->volume[i] * rows->weight[i];
+        rows->right[i] = rows->volume[i] * rows->weight[i];
     }
     const double width = context->carbonate_width > 0.0 ? context->carbonate_width : 1e-5;
     for (size_t j = 0; j < rows->columns; j++) {
         rows->matrix[rows->count * rows->columns + j] = j == 1 ? 1.0 / width : 0.0;
     }
-    right[rows->count] = context->carbonate_centre / width;
+    rows->right[rows->count] = context->carbonate_centre / width;
 }
 
 /* Covariances of all coefficients with Ve and f, from the triangle R: (R' R)^-1. */
@@ -187,34 +214,37 @@ static bool covariances(const gsl_matrix *triangle, struct gran_rows *rows)
 static bool solve(const struct curve_context *context, const struct geometry *at, enum lines lines,
                   struct gran_rows *rows)
 {
-    double *right = rows->residual + rows->capacity + 1;
     double tau_values[COLUMNS_MAX];
-    fill(context, at, lines, rows, right);
+    fill(context, at, lines, rows);
     gsl_matrix_view design = gsl_matrix_view_array(rows->matrix, rows->count + 1, rows->columns);
-    gsl_vector_view right_view = gsl_vector_view_array(right, rows->count + 1);
-    gsl_vector_view residual = gsl_vector_view_array(rows->residual, rows->count + 1);
+    gsl_vector_view right = gsl_vector_view_array(rows->right, rows->count + 1);
+    gsl_vector_view left = gsl_vector_view_array(rows->left, rows->count + 1);
     gsl_vector_view solution = gsl_vector_view_array(rows->coefficient, rows->columns);
     gsl_vector_view tau = gsl_vector_view_array(tau_values, rows->columns);
     gsl_linalg_QR_decomp(&design.matrix, &tau.vector);
     if (!covariances(&design.matrix, rows)) {
         return false;
     }
-    gsl_linalg_QR_lssolve(&design.matrix, &tau.vector, &right_view.vector, &solution.vector,
-                          &residual.vector);
-    const double ten = log(10.0);
+    gsl_linalg_QR_lssolve(&design.matrix, &tau.vector, &right.vector, &solution.vector,
+                          &left.vector);
+    return isfinite(rows->coefficient[0]);
+}
+
+/* Slopes dV/dpH and standardized residuals of the last solution, for the weights of the next. */
+static void reweight(const struct curve_context *context, const struct geometry *at,
+                     enum lines lines, struct gran_rows *rows)
+{
     for (size_t i = 0; i < rows->count; i++) {
-        /* Back to plain standardized residuals: the weight may have been lowered. */
-        double row[COLUMNS_MAX];
+        double row[COLUMNS_MAX], slope = 0.0;
         regressors(context, at, lines, rows->volume[i], rows->exponent[i], row);
-        double slope = 0.0;
         for (size_t j = 2; j < rows->columns; j++) {
-            slope += ten * fabs(row[j] * rows->coefficient[j]);
+            slope += log(10.0) * fabs(row[j] * rows->coefficient[j]);
         }
         rows->slope[i] = fmax(slope, 1e-9);
-        const double size = fabs(rows->residual[i]);
+        /* A lowered weight is undone, so that the residual is the plain one. */
+        const double size = fabs(rows->left[i]);
         rows->residual[i] = size > 2.5 ? size * size / 2.5 : size;
     }
-    return isfinite(rows->coefficient[0]);
 }
 
 /* Ve and its uncertainty: scatter, and the carbonate cut off below zero. */
@@ -229,7 +259,8 @@ static struct wa_volume_estimate estimate_of(const struct curve_context *context
     }
     const double freedom = fmax(weight - (double)rows->columns + 1.0, 0.0);
     const double trust = context->volume_u_noted ? 8.0 : 4.0;
-    const double scale = sqrt((trust + square) / (trust + freedom));
+    /* Few points to spare: widened, as Student's t would. */
+    const double scale = sqrt((trust + square) / (trust + freedom)) * (1.0 + 0.6 / (freedom + 1.0));
     double volume = rows->coefficient[0];
     double variance = rows->covariance[0][0] * fmax(scale * scale, 0.09);
     if (context->titrant_is_base && context->carbonate_width > 0.0) {
@@ -263,6 +294,7 @@ static struct wa_volume_estimate draw_lines(const struct curve_context *context,
         if (!solve(context, &at, lines, rows)) {
             return nothing;
         }
+        reweight(context, &at, lines, rows);
     }
     for (size_t j = 2; j < rows->columns; j++) {
         if (!(rows->coefficient[j] > 0.0)) {
@@ -272,7 +304,7 @@ static struct wa_volume_estimate draw_lines(const struct curve_context *context,
     return estimate_of(context, rows);
 }
 
-/* Part of the acid before the jump that is free hydrogen ion (hydroxide for a base): from the
+/* Part of the acid just before the jump that is free hydrogen ion (hydroxide for a base): from the
  * amounts when titrant and solution are known, else from the shape of the buffer, which is half as
  * steep between 30 and 70 per cent when all of it is free. */
 static double free_share(const struct curve_context *context, const struct geometry *at)
@@ -281,37 +313,75 @@ static double free_share(const struct curve_context *context, const struct geome
     const double low = at->previous + 0.3 * step, high = at->previous + 0.7 * step;
     const double exponent = rising_exponent(context, curve_reading_at(context, high, NULL));
     if (isfinite(context->titrant) && !context->curve->in_mV) {
-        const double free = pow(10.0, -exponent) / 0.8 * (context->start_volume + high);
-        return fmin(free / (context->titrant * 0.3 * step), 1.0);
+        const double per_activity =
+            (context->start_volume + high) / (context->titrant * free_gamma);
+        const double left = 0.3 * step * pow(10.0, exponent);
+        const double bound = bound_share(context, at, high, exponent);
+        const double constant = fmax(left - per_activity, 0.0) / fmax(bound, 0.1);
+        const double at_end = (context->start_volume + at->here) / (context->titrant * free_gamma);
+        return at_end / (at_end + constant);
     }
     const double rise = exponent - rising_exponent(context, curve_reading_at(context, low, NULL));
     return fmin(fmax((0.736 - rise) / (0.736 - 0.42), 0.0), 1.0);
 }
 
+/* A lone step rises by 0.95 from a quarter to three quarters; a steeper one holds earlier protons
+ * that are not seen as a jump. */
+static double hidden_part(const struct curve_context *context, const struct geometry *at)
+{
+    const double step = at->here - at->previous;
+    const double rise =
+        rising_exponent(context, curve_reading_at(context, at->previous + 0.75 * step, NULL)) -
+        rising_exponent(context, curve_reading_at(context, at->previous + 0.25 * step, NULL));
+    return 0.55 * fmin(fmax((rise - 1.05) / 0.3, 0.0), 1.0);
+}
+
+/* What the result owes to assumptions on the form of the lines: each is varied by about one
+ * standard uncertainty, at the weights that are there, and the shifts are added as squares. */
+static double form_u(const struct curve_context *context, const struct geometry *at,
+                     enum lines lines, double volume, struct gran_rows *rows)
+{
+    struct geometry trials[] = {*at, *at, *at, *at, *at};
+    const bool counted = isfinite(context->titrant) && !context->curve->in_mV;
+    const double share_u = counted ? 0.05 : 0.15;
+    const bool lone = at->hidden <= 0.0;
+    trials[0].stretch = 1.0 + context->slope_u;
+    trials[1].carbonate_shift = 0.1;
+    trials[2].hidden = lone ? 0.03 : at->hidden - 0.1;
+    trials[3].free_share += at->free_share > 0.5 ? -share_u : share_u;
+    trials[4].saturation = 13.0;
+    double square = 0.0;
+    for (size_t i = 0; i < sizeof trials / sizeof trials[0]; i++) {
+        if (solve(context, &trials[i], lines, rows)) {
+            square += pow(estimate_of(context, rows).volume_mL - volume, 2.0);
+        }
+    }
+    return sqrt(square);
+}
+
 /* The lines are drawn through a narrow stretch first and through wider ones as long as the result
- * stays the same within its uncertainty: the linear range is chosen by the data. */
-static struct wa_volume_estimate widest_lines(const struct curve_context *context,
-                                              struct geometry at, enum lines lines,
-                                              struct gran_rows *rows)
+ * stays the same within its uncertainty: the linear range is chosen by the data. Of these the one
+ * with the least uncertainty, that of the form included, is kept. */
+static struct wa_volume_estimate best_lines(const struct curve_context *context, struct geometry at,
+                                            enum lines lines, struct gran_rows *rows)
 {
     static const double reaches[] = {0.12, 0.2, 0.3, 0.45, 0.6};
-    struct wa_volume_estimate best = {0.0, 0.0};
-    double wander = 0.0;
+    struct wa_volume_estimate best = {0.0, 0.0}, last = {0.0, 0.0};
     for (size_t i = 0; i < sizeof reaches / sizeof reaches[0]; i++) {
         at.reach = reaches[i];
         const struct wa_volume_estimate next = draw_lines(context, at, lines, rows);
         if (!(next.u_mL > 0.0)) {
             continue;
         }
-        const double change = fabs(next.volume_mL - best.volume_mL);
-        if (best.u_mL > 0.0 && change > 1.5 * best.u_mL + 0.3 * context->volume_u) {
+        const double change = fabs(next.volume_mL - last.volume_mL);
+        if (last.u_mL > 0.0 && change > 1.5 * last.u_mL + 0.3 * context->volume_u) {
             break;
         }
-        wander = best.u_mL > 0.0 ? fmax(wander, change) : 0.0;
-        best = next;
-    }
-    if (best.u_mL > 0.0) {
-        best.u_mL = hypot(best.u_mL, 0.4 * wander);
+        const double total = hypot(next.u_mL, form_u(context, &at, lines, next.volume_mL, rows));
+        if (!(best.u_mL > 0.0) || total < best.u_mL) {
+            best = (struct wa_volume_estimate){next.volume_mL, total};
+        }
+        last = next;
     }
     return best;
 }
@@ -376,7 +446,7 @@ enum wa_status curve_equivalence_volumes(struct curve_context *context, struct w
     for (int round = 0; round < 2; round++) {
         for (size_t i = 0; i < curve->inflection_count; i++) {
             struct wa_inflection *inflection = &curve->inflections[i];
-            struct geometry at = {.next = NAN};
+            struct geometry at = {.next = NAN, .saturation = NAN, .stretch = 1.0};
             at.here = inflection->equivalence.volume_mL;
             at.previous = i > 0 ? curve->inflections[i - 1].equivalence.volume_mL
                                 : fmin(blank_of(context), curve->volume_mL[0]);
@@ -387,10 +457,11 @@ enum wa_status curve_equivalence_volumes(struct curve_context *context, struct w
             if (!(at.here > at.previous)) {
                 continue;
             }
+            at.hidden = hidden_part(context, &at);
             at.free_share = free_share(context, &at);
-            inflection->gran_before = widest_lines(context, at, LINES_BEFORE, &rows);
-            inflection->gran_after = widest_lines(context, at, LINES_AFTER, &rows);
-            settle(context, inflection, widest_lines(context, at, LINES_BOTH, &rows),
+            inflection->gran_before = best_lines(context, at, LINES_BEFORE, &rows);
+            inflection->gran_after = best_lines(context, at, LINES_AFTER, &rows);
+            settle(context, inflection, best_lines(context, at, LINES_BOTH, &rows),
                    at.here - at.previous);
         }
     }
