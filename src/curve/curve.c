@@ -57,8 +57,7 @@ static void take_conditions(const struct wa_run *run, struct curve_context *cont
 {
     const struct wa_conditions *conditions = &run->conditions;
     double unused;
-    take(&conditions->volume_uncertainty, 0.01, 0.0, &context->volume_u, &unused);
-    context->volume_u = fmax(context->volume_u, 1e-5);
+    take(&conditions->volume_uncertainty, NAN, 0.0, &context->volume_u, &unused);
     context->volume_u_noted = conditions->volume_uncertainty.known &&
                               conditions->volume_uncertainty.origin != WA_ORIGIN_DEFAULT;
     context->increments = run->volume_kind == WA_VOLUME_INCREMENT;

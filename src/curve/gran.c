@@ -14,7 +14,7 @@
 #include <math.h>
 #include <stdlib.h>
 
-enum { COLUMNS_MAX = 4, ROUNDS = 6 };
+enum { COLUMNS_MAX = 4, ROUNDS = 8 };
 
 /* Errors of the linear form itself (activity, electrode slope, hidden steps) grow with the distance
  * from the equivalence volume: this part of it. */
@@ -40,6 +40,7 @@ struct gran_rows {
     double *storage;
     double *volume, *exponent, *slope, *weight, *residual, *right, *left, *matrix;
     size_t capacity, count, columns;
+    double volume_u; /* mL, error of one volume as the scatter about the lines tells */
     double coefficient[COLUMNS_MAX];
     double covariance[COLUMNS_MAX][2]; /* with Ve and with f */
 };
@@ -167,7 +168,7 @@ static void fill(const struct curve_context *context, const struct geometry *at,
         double row[COLUMNS_MAX];
         regressors(context, at, lines, rows->volume[i], rows->exponent[i], row);
         const double form = form_error * (rows->volume[i] - at->here);
-        const double u = sqrt(context->volume_u * context->volume_u +
+        const double u = sqrt(rows->volume_u * rows->volume_u +
                               pow(reading_u * rows->slope[i], 2.0) + form * form);
         const double size = fabs(rows->residual[i]);
         rows->weight[i] = (size > 2.5 ? sqrt(2.5 / size) : 1.0) / u;
@@ -230,6 +231,25 @@ static bool solve(const struct curve_context *context, const struct geometry *at
     return isfinite(rows->coefficient[0]);
 }
 
+/* One step of expectation and maximisation (Dempster, Laird, Rubin 1977) for the variance of the
+ * volumes beside that of the readings. What was noted, or the default, counts as some observations
+ * too: a dozen points cannot tell. */
+static void update_volume_u(const struct curve_context *context, struct gran_rows *rows)
+{
+    const double own = rows->volume_u * rows->volume_u;
+    const double count = (double)rows->count;
+    const double spare = fmax(count - (double)rows->columns + 1.0, 1.0);
+    const double prior = context->volume_u_noted ? 20.0 : 2.0;
+    double sum = prior * context->volume_u * context->volume_u;
+    for (size_t i = 0; i < rows->count; i++) {
+        const double variance = 1.0 / (rows->weight[i] * rows->weight[i]);
+        const double part = fmin(own / variance, 1.0);
+        const double square = fmin(pow(rows->left[i], 2.0), 9.0) * variance * count / spare;
+        sum += part * part * square + own * (1.0 - part);
+    }
+    rows->volume_u = sqrt(sum / (prior + count));
+}
+
 /* Slopes dV/dpH and standardized residuals of the last solution, for the weights of the next. */
 static void reweight(const struct curve_context *context, const struct geometry *at,
                      enum lines lines, struct gran_rows *rows)
@@ -260,7 +280,7 @@ static struct wa_volume_estimate estimate_of(const struct curve_context *context
     const double freedom = fmax(weight - (double)rows->columns + 1.0, 0.0);
     const double trust = context->volume_u_noted ? 8.0 : 4.0;
     /* Few points to spare: widened, as Student's t would. */
-    const double scale = sqrt((trust + square) / (trust + freedom)) * (1.0 + 0.6 / (freedom + 1.0));
+    const double scale = sqrt((trust + square) / (trust + freedom)) * (1.0 + 1.2 / (freedom + 1.0));
     double volume = rows->coefficient[0];
     double variance = rows->covariance[0][0] * fmax(scale * scale, 0.09);
     if (context->titrant_is_base && context->carbonate_width > 0.0) {
@@ -280,6 +300,7 @@ static struct wa_volume_estimate draw_lines(const struct curve_context *context,
 {
     const struct wa_volume_estimate nothing = {0.0, 0.0};
     gather(context, &at, lines, rows);
+    rows->volume_u = context->volume_u;
     size_t before = 0;
     for (size_t i = 0; i < rows->count; i++) {
         before += rows->exponent[i] < at.exponent;
@@ -294,6 +315,7 @@ static struct wa_volume_estimate draw_lines(const struct curve_context *context,
         if (!solve(context, &at, lines, rows)) {
             return nothing;
         }
+        update_volume_u(context, rows);
         reweight(context, &at, lines, rows);
     }
     for (size_t j = 2; j < rows->columns; j++) {

@@ -117,7 +117,7 @@ static void place_one(struct curve_context *context, const struct curve_jump *ju
     const struct wa_volume_estimate both =
         combine(inflection->first_derivative, inflection->second_derivative);
     inflection->volume_mL = both.volume_mL;
-    inflection->u_mL = fmax(both.u_mL, gap_u(curve, both.volume_mL));
+    inflection->u_mL = hypot(fmax(both.u_mL, gap_u(curve, both.volume_mL)), context->volume_u);
     inflection->reading = curve_reading_at(context, both.volume_mL, NULL);
     inflection->slope = curve->first[top];
     inflection->slope_u = curve->first_u[top];

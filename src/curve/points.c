@@ -3,6 +3,12 @@
 #include <math.h>
 #include <stdlib.h>
 
+static int compare_doubles(const void *left, const void *right)
+{
+    const double a = *(const double *)left, b = *(const double *)right;
+    return (a > b) - (a < b);
+}
+
 /* Which points of a run are used: finite ones; volumes that do not grow are merged by averaging. */
 static size_t merge_equal_volumes(const struct wa_run *run, double *volume, double *reading)
 {
@@ -136,6 +142,27 @@ static void convert_readings(const struct wa_run *run, struct curve_context *con
     context->slope = 1.0;
 }
 
+/* Nobody stated the volume error: who doses in small steps doses with a finer tool. A twentieth of
+ * the usual step, between 3 and 30 microlitres. */
+static enum wa_status assume_volume_u(struct curve_context *context, struct wa_error *error)
+{
+    const struct wa_curve *curve = context->curve;
+    if (context->volume_u > 0.0) {
+        return WA_OK;
+    }
+    double *gaps = malloc(curve->point_count * sizeof *gaps);
+    if (gaps == NULL) {
+        return wa_fail_memory(error);
+    }
+    for (size_t i = 0; i + 1 < curve->point_count; i++) {
+        gaps[i] = curve->volume_mL[i + 1] - curve->volume_mL[i];
+    }
+    qsort(gaps, curve->point_count - 1, sizeof *gaps, compare_doubles);
+    context->volume_u = fmin(fmax(0.05 * gaps[(curve->point_count - 1) / 2], 0.003), 0.03);
+    free(gaps);
+    return WA_OK;
+}
+
 enum wa_status curve_collect(const struct wa_run *run, struct curve_context *context,
                              struct wa_error *error)
 {
@@ -156,6 +183,10 @@ enum wa_status curve_collect(const struct wa_run *run, struct curve_context *con
                        "measure at least a dozen.",
                        curve->point_count);
     }
+    const enum wa_status status = assume_volume_u(context, error);
+    if (status != WA_OK) {
+        return status;
+    }
     size_t group;
     curve->point_count =
         average_groups(curve->volume_mL, curve->reading, curve->point_count, &group);
@@ -169,12 +200,6 @@ enum wa_status curve_collect(const struct wa_run *run, struct curve_context *con
                             group);
     }
     return WA_OK;
-}
-
-static int compare_doubles(const void *left, const void *right)
-{
-    const double a = *(const double *)left, b = *(const double *)right;
-    return (a > b) - (a < b);
 }
 
 /* One contrast of five points spaced `lag` apart, scaled so that a cubic gives zero and independent
