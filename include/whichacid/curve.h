@@ -57,7 +57,9 @@ struct wa_half_equivalence {
     bool merged; /**< the interval holds more than one proton: the value is their mean, not a pKa */
 };
 
-/** The model-free features of a run. Arrays have `point_count` entries, one a distinct volume. */
+/** The model-free features of a run. Arrays have `point_count` entries, one a distinct volume; a
+ * reading that clearly falls out of its neighbours' order is left out with a remark, and past 4000
+ * volumes neighbours are averaged in groups, with a remark. */
 struct wa_curve {
     size_t point_count;
     double *volume_mL;

@@ -96,6 +96,29 @@ static void take_carbonate(const struct wa_run *run, struct curve_context *conte
                    &context->carbonate_u);
 }
 
+/* A rise that the curve leaves off in is no jump yet: nothing shows where it ends. */
+static enum wa_status remark_open_end(const struct curve_context *context, struct wa_error *error)
+{
+    struct wa_curve *curve = context->curve;
+    const size_t last = curve->point_count - 1;
+    const size_t start =
+        curve->buffer_count > 0
+            ? curve_index_below(curve, curve->buffers[curve->buffer_count - 1].volume_mL)
+            : last / 2;
+    const double flat = fabs(curve->first[start]);
+    const double end = fabs(curve->first[last]);
+    const double rise = fabs(curve->smooth[last] - curve->smooth[start]);
+    const bool open = end - flat > 5.0 * hypot(curve->first_u[last], curve->first_u[start]) &&
+                      end > 2.0 * flat && rise > 0.5 * context->per_decade;
+    if (!open) {
+        return WA_OK;
+    }
+    return curve_remark(curve, error,
+                        "The curve ends at %.2f mL on a rise: an equivalence point there is not "
+                        "passed; add more titrant.",
+                        curve->volume_mL[last]);
+}
+
 static enum wa_status analyse(const struct wa_run *run, struct curve_context *context,
                               struct wa_error *error)
 {
@@ -108,6 +131,12 @@ static enum wa_status analyse(const struct wa_run *run, struct curve_context *co
     }
     take_carbonate(run, context);
     status = curve_estimate_noise(run, context, error);
+    if (status == WA_OK) {
+        status = curve_drop_outliers(context, error);
+    }
+    if (status == WA_OK) {
+        status = curve_estimate_noise(run, context, error);
+    }
     if (status == WA_OK) {
         status = curve_smooth(context, error);
     }
@@ -124,6 +153,7 @@ static enum wa_status analyse(const struct wa_run *run, struct curve_context *co
     }
     if (status == WA_OK) {
         curve_explain_spacing(context);
+        status = remark_open_end(context, error);
     }
     return status;
 }

@@ -67,6 +67,8 @@ enum wa_status curve_collect(const struct wa_run *run, struct curve_context *con
 /** Fill curve->noise from contrasts that a cubic leaves at zero. */
 enum wa_status curve_estimate_noise(const struct wa_run *run, struct curve_context *context,
                                     struct wa_error *error);
+/** Take out single readings that a mistyped digit has thrown off, with a remark for each. */
+enum wa_status curve_drop_outliers(struct curve_context *context, struct wa_error *error);
 /** Fill smooth, first, second and their uncertainties. */
 enum wa_status curve_smooth(struct curve_context *context, struct wa_error *error);
 /** Find the jumps; at most `capacity` are written, in order of volume. */

@@ -23,6 +23,10 @@ static const double form_error = 0.02;
 /* Activity coefficient of the free ions; the lines' slopes are free, so that it hardly matters. */
 static const double free_gamma = 0.8;
 
+/* No curve pins a step better than this part of it: burette scale within the run, evaporation,
+ * carbon dioxide from the air. */
+static const double finest_part = 3e-4;
+
 enum lines { LINES_BEFORE = 1, LINES_AFTER = 2, LINES_BOTH = 3 };
 
 struct geometry {
@@ -429,21 +433,35 @@ static double walked_u(const struct curve_context *context, double volume)
     return context->increments ? context->volume_u * sqrt(steps) : 0.0;
 }
 
+/* How far the two lines lie apart beyond what their uncertainties allow: a sign that the curve is
+ * no sharp equilibrium curve (slow reaction, drifting electrode, mixture). */
+static double rift(const struct wa_inflection *inflection)
+{
+    const struct wa_volume_estimate *before = &inflection->gran_before;
+    const struct wa_volume_estimate *after = &inflection->gran_after;
+    const double apart = fabs(before->volume_mL - after->volume_mL);
+    const bool both = before->u_mL > 0.0 && after->u_mL > 0.0;
+    return both && apart > 3.0 * hypot(before->u_mL, after->u_mL) ? apart : 0.0;
+}
+
 static void settle(const struct curve_context *context, struct wa_inflection *inflection,
                    struct wa_volume_estimate both, double step)
 {
     const struct wa_volume_estimate rough = from_inflection(context, inflection);
     const double difference = fabs(both.volume_mL - rough.volume_mL);
+    const double apart = rift(inflection);
     const bool usable = both.u_mL > 0.0 && difference < 0.15 * step + 3.0 * rough.u_mL;
     inflection->equivalence = rough;
+    inflection->methods_disagree = apart > 0.0;
     if (usable) {
         const double together = hypot(both.u_mL, rough.u_mL);
-        inflection->methods_disagree = difference > 3.0 * together;
-        if (both.u_mL < rough.u_mL || !inflection->methods_disagree) {
+        inflection->methods_disagree |= difference > 2.5 * together;
+        if (!inflection->methods_disagree) {
             inflection->equivalence = both;
-        }
-        if (inflection->methods_disagree) {
-            inflection->equivalence.u_mL = hypot(inflection->equivalence.u_mL, 0.5 * difference);
+            inflection->equivalence.u_mL = hypot(both.u_mL, finest_part * step);
+        } else {
+            inflection->equivalence.u_mL =
+                hypot(fmin(rough.u_mL, both.u_mL), fmax(0.5 * difference, 0.25 * apart));
         }
     }
     inflection->equivalence.u_mL =

@@ -12,13 +12,15 @@
  * of activity coefficients over a run is covered by this. */
 static const double mixed_u = 0.03;
 
+/* Stand-in for a titrant concentration that nobody noted, mol/L: what laboratories use most. */
+static const double usual_titrant = 0.1, usual_titrant_u = 0.05;
+
 /* Everything the correction depends on, so that each can be varied alone. */
 enum parameter { FROM, TO, READING, OFFSET, SLOPE, TITRANT, START, PARAMETERS };
 
 struct balance {
     const struct curve_context *context;
     const struct wa_curve *curve;
-    bool corrected; /* titrant concentration known: free ions can be counted */
     double value[PARAMETERS], u[PARAMETERS];
     size_t step; /* index of the step in question */
 };
@@ -37,18 +39,13 @@ static double log_gamma(double ionic_strength)
 
 static double ionic_strength(const struct balance *balance, double volume)
 {
-    const double salt = balance->corrected
-                            ? balance->value[TITRANT] * volume / (balance->value[START] + volume)
-                            : 0.05;
+    const double salt = balance->value[TITRANT] * volume / (balance->value[START] + volume);
     return salt + balance->context->background;
 }
 
 /* ([H+] - [OH-]) (V0 + V) / c in mL; pKw near 25 degree Celsius falls by 0.033 a degree. */
 static double free_ions(const struct balance *balance, double volume, double pH)
 {
-    if (!balance->corrected) {
-        return 0.0;
-    }
     const double gamma = pow(10.0, log_gamma(ionic_strength(balance, volume)));
     const double pKw = 13.995 - 0.033 * (balance->context->temperature_C - 25.0);
     const double free = pow(10.0, -pH) / gamma - pow(10.0, pH - pKw) / gamma;
@@ -90,7 +87,6 @@ static struct balance balance_for(const struct curve_context *context, size_t st
     const struct wa_curve *curve = context->curve;
     const struct wa_volume_estimate *here = &curve->inflections[step].equivalence;
     struct balance balance = {.context = context, .curve = curve, .step = step};
-    balance.corrected = isfinite(context->titrant);
     balance.value[FROM] = step_start(curve, step, context->blank_mL);
     balance.u[FROM] = step == 0 ? context->blank_u : curve->inflections[step - 1].equivalence.u_mL;
     balance.value[TO] = here->volume_mL;
@@ -101,8 +97,9 @@ static struct balance balance_for(const struct curve_context *context, size_t st
     balance.u[OFFSET] = context->offset_u;
     balance.value[SLOPE] = context->slope;
     balance.u[SLOPE] = context->slope_u;
-    balance.value[TITRANT] = context->titrant;
-    balance.u[TITRANT] = context->titrant_u;
+    const bool known = isfinite(context->titrant);
+    balance.value[TITRANT] = known ? context->titrant : usual_titrant;
+    balance.u[TITRANT] = known ? context->titrant_u : usual_titrant_u;
     balance.value[START] = context->start_volume;
     balance.u[START] = context->start_volume_u;
     return balance;
@@ -114,7 +111,7 @@ static double propagate(struct balance *balance, double pKa)
 {
     double square = mixed_u * mixed_u;
     for (size_t k = 0; k < PARAMETERS; k++) {
-        if (!(balance->u[k] > 0.0) || (k >= TITRANT && !balance->corrected)) {
+        if (!(balance->u[k] > 0.0)) {
             continue;
         }
         struct balance shifted = *balance;
@@ -202,15 +199,36 @@ static enum wa_status drop_unsolved(struct curve_context *context, struct wa_err
             curve->halves[kept++] = half;
             continue;
         }
-        status =
-            curve_remark(curve, error,
-                         "The step before %.2f mL behaves like a strong %s (pH %.2f half-way): "
-                         "it has no half-equivalence pKa.",
-                         curve->inflections[half.step - 1].equivalence.volume_mL,
-                         context->titrant_is_base ? "acid" : "base", half.pH);
+        const char *kind = context->titrant_is_base ? "acid" : "base";
+        const double volume = curve->inflections[half.step - 1].equivalence.volume_mL;
+        status = isfinite(context->titrant)
+                     ? curve_remark(curve, error,
+                                    "The step before %.2f mL behaves like a strong %s (pH %.2f "
+                                    "half-way): it has no half-equivalence pKa.",
+                                    volume, kind, half.pH)
+                     : curve_remark(curve, error,
+                                    "The step before %.2f mL is that of a strong or fairly strong "
+                                    "%s (pH %.2f half-way): note the titrant concentration and the "
+                                    "solution volume to have its pKa computed.",
+                                    volume, kind, half.pH);
     }
     curve->half_count = kept;
     return status;
+}
+
+/* Say so when a constant hangs on the assumed titrant. */
+static enum wa_status remark_assumed(struct curve_context *context, struct wa_error *error)
+{
+    const struct wa_curve *curve = context->curve;
+    for (size_t i = 0; i < curve->half_count && !isfinite(context->titrant); i++) {
+        if (fabs(curve->halves[i].correction) > 0.02) {
+            return curve_remark(context->curve, error,
+                                "The titrant concentration is not noted: %.1f mol/L in %.0f mL of "
+                                "solution was assumed to correct the pKa of strong steps.",
+                                usual_titrant, context->start_volume);
+        }
+    }
+    return WA_OK;
 }
 
 enum wa_status curve_half_equivalences(struct curve_context *context, struct wa_error *error)
@@ -231,5 +249,6 @@ enum wa_status curve_half_equivalences(struct curve_context *context, struct wa_
         struct balance balance = balance_for(context, (size_t)(curve->halves[i].step - 1));
         curve->halves[i].merged = looks_merged(&balance, curve->halves[i].pKa);
     }
-    return drop_unsolved(context, error);
+    const enum wa_status status = drop_unsolved(context, error);
+    return status == WA_OK ? remark_assumed(context, error) : status;
 }

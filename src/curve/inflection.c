@@ -44,6 +44,20 @@ static double gap_u(const struct wa_curve *curve, double volume)
     return (curve->volume_mL[i + 1] - curve->volume_mL[i]) / sqrt(12.0);
 }
 
+/* Where the noise leaves several points the steepest, the volume may be that of any of them. */
+static double plateau_u(const struct wa_curve *curve, struct range range, size_t top)
+{
+    const double least = fabs(curve->first[top]) - curve->first_u[top];
+    size_t first = top, last = top;
+    for (size_t i = range.first; i <= range.last; i++) {
+        if (curve->direction * curve->first[i] + curve->first_u[i] >= least) {
+            first = i < first ? i : first;
+            last = i > last ? i : last;
+        }
+    }
+    return 0.5 * (curve->volume_mL[last] - curve->volume_mL[first]) / sqrt(12.0);
+}
+
 static double noise_u(const struct wa_curve *curve, size_t i)
 {
     const double third = fabs(curve->second[i + 1] - curve->second[i - 1]) /
@@ -110,7 +124,8 @@ static void place_one(struct curve_context *context, const struct curve_jump *ju
 {
     struct wa_curve *curve = context->curve;
     struct wa_inflection *inflection = &curve->inflections[curve->inflection_count++];
-    const size_t top = steepest_point(curve, search_range(curve, jump));
+    const struct range range = search_range(curve, jump);
+    const size_t top = steepest_point(curve, range);
     *inflection = (struct wa_inflection){0};
     inflection->first_derivative = first_derivative_maximum(curve, top);
     inflection->second_derivative = second_derivative_zero(curve, top);
@@ -118,6 +133,7 @@ static void place_one(struct curve_context *context, const struct curve_jump *ju
         combine(inflection->first_derivative, inflection->second_derivative);
     inflection->volume_mL = both.volume_mL;
     inflection->u_mL = hypot(fmax(both.u_mL, gap_u(curve, both.volume_mL)), context->volume_u);
+    inflection->u_mL = fmax(inflection->u_mL, plateau_u(curve, range, top));
     inflection->reading = curve_reading_at(context, both.volume_mL, NULL);
     inflection->slope = curve->first[top];
     inflection->slope_u = curve->first_u[top];

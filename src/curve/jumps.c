@@ -154,6 +154,33 @@ static size_t join_twins(const struct curve_context *context, struct curve_jump 
     return kept;
 }
 
+/* Rise of the reading beyond what the flatter neighbourhood would give over the same volume. A
+ * single misread volume or a slow electrode gives a step of a few tenths between two points; a real
+ * jump between two points is larger and a faint real one extends over many. */
+static bool substantial(const struct curve_context *context, const struct curve_jump *jump)
+{
+    const double *volume = context->curve->volume_mL;
+    const double points = (double)(jump->steep.last - jump->steep.first + 1);
+    const double width = volume[jump->steep.last] - volume[jump->steep.first];
+    const double base = fmax(jump->before.slope, jump->after.slope);
+    const double least = (0.08 + 0.6 / points) * context->per_decade;
+    return (jump->steep.slope - base) * width > least;
+}
+
+static size_t drop_slight(const struct curve_context *context, struct curve_jump *jumps,
+                          size_t count)
+{
+    size_t kept = 0;
+    for (size_t i = 0; i < count; i++) {
+        if (substantial(context, &jumps[i])) {
+            jumps[kept++] = jumps[i];
+        } else if (kept > 0 && jumps[i].after.slope < jumps[kept - 1].after.slope) {
+            jumps[kept - 1].after = jumps[i].after;
+        }
+    }
+    return kept;
+}
+
 static size_t keep_strongest(struct curve_jump *jumps, size_t count, size_t capacity)
 {
     while (count > capacity) {
@@ -193,6 +220,7 @@ enum wa_status curve_find_jumps(const struct curve_context *context, struct curv
     }
     settle_sides(found, found_count, &search);
     found_count = join_twins(context, found, found_count);
+    found_count = drop_slight(context, found, found_count);
     found_count = keep_strongest(found, found_count, capacity);
     for (size_t i = 0; i < found_count; i++) {
         jumps[i] = found[i];

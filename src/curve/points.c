@@ -297,6 +297,9 @@ enum wa_status curve_estimate_noise(const struct wa_run *run, struct curve_conte
     }
     const double believed = noted->known && noted->origin != WA_ORIGIN_DEFAULT ? 8.0 : 2.0;
     noise = sqrt((seen * noise * noise + believed * stated * stated) / (seen + believed));
+    if (used < 8) {
+        noise = fmin(noise, 5.0 * stated);
+    }
     const double finest = rounding_u(curve);
     curve->noise = fmax(noise, fmax(finest, 1e-6 * context->per_decade));
     curve->noise_degrees_of_freedom = seen + believed;
