@@ -63,5 +63,5 @@ build_in() {
         rm -r "$folder"
     fi
     quietly env CC="$compiler" cmake -S "$top" -B "$folder" -G Ninja "$@"
-    quietly cmake --build "$folder" --target "$target"
+    quietly cmake --build "$folder" --target "$target" -- --quiet
 }
