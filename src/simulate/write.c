@@ -20,14 +20,14 @@ static void write_truth(struct wa_text *text, const struct wa_simulation *simula
 {
     const struct wa_simulation_options *options = &simulation->options;
     for (int f = 0; f < options->form_count; f++) {
-        wa_text_append(text, "%s%s, %.6g g", f == 0 ? "# simulated sample: " : " + ",
-                       simulation->forms[f]->key, simulation->mass[f]);
+        wa_text_append(text, "%s%.6g g of %s", f == 0 ? "# simulated sample: " : " and ",
+                       simulation->mass[f], simulation->forms[f]->key);
     }
     wa_text_append(text,
-                   "\n# simulated titrant: %s, %.6g mol/L, %.4g %% of it carbonate"
-                   "\n# simulated electrode: slope %.5g %%, offset %.4g pH"
+                   "\n# simulated titrant: %.6g mol/L of %s\n# simulated carbonate: %.4g %%"
+                   "\n# simulated electrode slope: %.5g %%\n# simulated electrode offset: %.4g pH"
                    "\n# simulated noise: %.4g pH and %.4g mL\n",
-                   simulation->titrant->key, simulation->titrant_concentration,
+                   simulation->titrant_concentration, simulation->titrant->key,
                    100.0 * simulation->titrant_carbonate, 100.0 * simulation->electrode_slope,
                    simulation->electrode_offset, options->noise_reading, options->noise_volume);
     if (options->carbon_dioxide > 0.0) {
