@@ -179,8 +179,8 @@ enum wa_status curve_collect(const struct wa_run *run, struct curve_context *con
     free(ordered.points);
     if (curve->point_count < 5) {
         return wa_fail(error, WA_ERROR_INPUT, run->file, 0,
-                       "There are only %zu points with different volumes, too few for a curve; "
-                       "measure at least a dozen.",
+                       "The points have %zu different volumes, too few for a curve; "
+                       "measure at least a dozen points.",
                        curve->point_count);
     }
     const enum wa_status status = assume_volume_u(context, error);
