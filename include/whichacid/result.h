@@ -6,7 +6,7 @@
 #include "whichacid/fit.h"
 
 /** Most candidates that are listed. */
-#define WA_CANDIDATES_MAX 12
+#define WA_CANDIDATES_MAX 40
 
 /** An input file. */
 struct wa_result_input {

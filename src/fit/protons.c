@@ -9,7 +9,24 @@ static const double prior_already_lost = 0.25;
 static const int trial_iterations = 3;
 static const double hopeless = 12.0; /* ln of the evidence ratio at which more protons are vain */
 
-/* Amounts worth starting from: the last jump ends the protons, or the titration stops before. */
+/* A start nearer than this to another is the same. */
+static const double same_start = 0.1;
+
+/* Starts of one generic acid. */
+#define STARTS_MAX (WA_INFLECTIONS_MAX * WA_GENERIC_STEPS_MAX + 2)
+
+static void add_start(double *amount, int *count, double value)
+{
+    for (int i = 0; i < *count; i++) {
+        if (fabs(amount[i] / value - 1.0) < same_start) {
+            return;
+        }
+    }
+    amount[(*count)++] = value;
+}
+
+/* Amounts worth starting from: each jump may end any number of the protons, or the titration stops
+ * before the last. */
 static int start_amounts(const struct wa_experiment *experiment, const struct wa_curve *curve,
                          int protons, double *amount)
 {
@@ -18,11 +35,16 @@ static int start_amounts(const struct wa_experiment *experiment, const struct wa
     const double last_mL = experiment->volume_mL[experiment->count - 1];
     int count = 0;
     for (size_t i = 0; i < curve->inflection_count; i++) {
-        amount[count++] = equivalents_per_mL * curve->inflections[i].volume_mL / protons;
+        for (int ended = protons; ended >= 1; ended--) {
+            const double value = equivalents_per_mL * curve->inflections[i].volume_mL / ended;
+            if (value * protons < 2.0 * equivalents_per_mL * last_mL) {
+                add_start(amount, &count, value);
+            }
+        }
     }
-    amount[count++] = equivalents_per_mL * 1.3 * last_mL / protons;
+    add_start(amount, &count, equivalents_per_mL * 1.3 * last_mL / protons);
     if (curve->inflection_count == 0) {
-        amount[count++] = equivalents_per_mL * 0.6 * last_mL / protons;
+        add_start(amount, &count, equivalents_per_mL * 0.6 * last_mL / protons);
     }
     return count;
 }
@@ -34,7 +56,7 @@ static enum wa_status fit_generic(const struct wa_experiment *experiment,
 {
     const int protons =
         experiment->titrant_is_base ? generic->step_count - generic->lost : generic->lost;
-    double amount[WA_INFLECTIONS_MAX + 2];
+    double amount[STARTS_MAX];
     double start[WA_PARAMETERS_MAX], best_start[WA_PARAMETERS_MAX];
     double best = -INFINITY;
     const struct wa_fit_options trial = {.most_iterations = trial_iterations};

@@ -73,17 +73,28 @@ static enum wa_status collect(const struct wa_identification *work, struct wa_re
     return WA_OK;
 }
 
-/* Shares of the candidates by the charge of their acid: the activity correction of a constant
- * depends on it, and the curve alone hardly tells. */
+/* Charge of the acid's species as weighed: of the first acid system of the form. */
+static int start_charge(const struct wa_table *table, const struct wa_form *form)
+{
+    for (int k = 0; k < form->part_count; k++) {
+        const struct wa_form_part *part = &form->parts[k];
+        if (part->acid != WA_PART_WATER) {
+            return table->acids[part->acid].charge - part->lost / part->count;
+        }
+    }
+    return 0;
+}
+
+/* Shares of the candidates by the charge that their acid starts from: the activity correction of a
+ * constant depends on it, and the curve alone hardly tells. */
 static void weigh_charges(struct wa_identification *work)
 {
-    work->charge_weight[0] = work->charge_weight[1] = 0.0;
+    const int middle = WA_START_CHARGES / 2;
     for (size_t i = 0; i < work->match.candidate_count; i++) {
         const struct wa_candidate *candidate = &work->match.candidates[i];
-        if (candidate->sample->part_count > 0) {
-            const int charged = candidate->sample->parts[0].charge > 0 ? 1 : 0;
-            work->charge_weight[charged] += candidate->probability;
-        }
+        const int charge = start_charge(work->table, &work->table->forms[candidate->form]);
+        const int slot = charge < -middle ? 0 : charge > middle ? 2 * middle : charge + middle;
+        work->charge_weight[slot] += candidate->probability;
     }
 }
 

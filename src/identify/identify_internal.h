@@ -6,6 +6,9 @@
 #include "whichacid/match.h"
 #include "whichacid/protons.h"
 
+/** Charges that an acid's species may have at the start, from -4 to +4. */
+#define WA_START_CHARGES 9
+
 /** What the steps hand to one another. */
 struct wa_identification {
     const struct wa_table *table;
@@ -17,7 +20,7 @@ struct wa_identification {
     struct wa_proton_study study; /**< of the first run */
     struct wa_match match;
     bool matched;
-    double charge_weight[2]; /**< share of candidates whose acid is uncharged, charged */
+    double charge_weight[WA_START_CHARGES]; /**< share of the candidates by start charge */
 };
 
 /** A malloc'd sentence; NULL when memory is out. */

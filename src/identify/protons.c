@@ -5,34 +5,64 @@
 #include <stdio.h>
 #include <stdlib.h>
 
-static const double floor_weight = 0.02;  /* no charge type is ever ruled out by the table alone */
+static const double least_unknown = 0.1;  /* the table alone never rules out a charge */
 static const double edge_of_window = 0.3; /* pH */
 
-static bool charged(const struct wa_generic *generic)
+/* Charge that the acid's species starts from. */
+static int start_charge(const struct wa_generic *generic)
 {
-    return generic->charge > 0;
+    return generic->charge - generic->lost;
+}
+
+/* Of the start charges that generic acids with this many shown protons have, the one nearest to a
+ * given charge. */
+static int nearest_charge(const struct wa_proton_study *study, int shown, int charge)
+{
+    int best = 0, distance = 1000;
+    for (int i = 0; i < study->count; i++) {
+        const int here = start_charge(&study->generic[i]);
+        if (study->generic[i].shown == shown && abs(here - charge) < distance) {
+            distance = abs(here - charge);
+            best = here;
+        }
+    }
+    return best;
+}
+
+/* Share of one start charge by the table: of the candidates, those that it is nearest to. */
+static double share_by_table(const struct wa_identification *work, int shown, int charge)
+{
+    double share = 0.0;
+    for (int slot = 0; slot < WA_START_CHARGES; slot++) {
+        if (nearest_charge(&work->study, shown, slot - WA_START_CHARGES / 2) == charge) {
+            share += work->charge_weight[slot];
+        }
+    }
+    return share;
 }
 
 /* Weights of the generic fits that show the same protons as the best: their evidence, shared out
- * between charge types as the candidates are. */
+ * between start charges as the candidates are, as far as the table is believed. */
 static double fit_weight(const struct wa_identification *work, const struct wa_generic *generic)
 {
     const struct wa_proton_study *study = &work->study;
     const int shown = study->generic[0].shown;
-    double of_type = 0.0, of_other = 0.0;
+    double of_charge = 0.0, of_all = 0.0;
     if (generic->shown != shown) {
         return 0.0;
     }
     for (int i = 0; i < study->count; i++) {
-        const struct wa_generic *other = &study->generic[i];
-        if (other->shown == shown) {
-            *(charged(other) == charged(generic) ? &of_type : &of_other) += other->probability;
+        if (study->generic[i].shown == shown) {
+            of_all += study->generic[i].probability;
+            of_charge += start_charge(&study->generic[i]) == start_charge(generic)
+                             ? study->generic[i].probability
+                             : 0.0;
         }
     }
-    const double unknown = work->match.not_in_table;
-    const double by_table = work->charge_weight[charged(generic) ? 1 : 0] + floor_weight;
-    const double by_curve = of_type / (of_type + of_other);
-    return generic->probability / of_type * (by_table + unknown * by_curve);
+    const double unknown = fmax(work->match.not_in_table, least_unknown);
+    const double by_table = share_by_table(work, shown, start_charge(generic));
+    return generic->probability / of_charge *
+           ((1.0 - unknown) * by_table + unknown * of_charge / of_all);
 }
 
 /* The step of a generic acid that is the k-th proton of this run, counted from the start. */

@@ -5,6 +5,7 @@
 
 #include <math.h>
 #include <stdlib.h>
+#include <string.h>
 
 static const double ln_sqrt_2pi = 0.91893853320467274;
 static const double same_mass = 1e-4; /* relative: isomers and enantiomers weigh the same */
@@ -196,6 +197,20 @@ static size_t cluster_size(const struct wa_table *table, const struct wa_titrate
     return size;
 }
 
+/* The form that stands for a cluster: the acid itself if it is there, else the first. */
+static int representative(const struct wa_table *table, const struct wa_group *group, size_t first,
+                          size_t size)
+{
+    for (size_t i = first; group->acid >= 0 && i < first + size; i++) {
+        if (strcmp(table->forms[group->forms[i]].key, table->acids[group->acid].key) == 0) {
+            const int form = group->forms[i];
+            group->forms[i] = group->forms[first];
+            group->forms[first] = form;
+        }
+    }
+    return group->forms[first];
+}
+
 static enum wa_status add_candidates(const struct wa_table *table,
                                      const struct wa_titrated_mass *mass, struct wa_group *group,
                                      struct wa_match *match, size_t *capacity,
@@ -213,7 +228,7 @@ static enum wa_status add_candidates(const struct wa_table *table,
         const double molar_mass = table->forms[group->forms[first]].molar_mass;
         match->candidates[match->candidate_count++] = (struct wa_candidate){
             .acid = group->acid,
-            .form = group->forms[first],
+            .form = representative(table, group, first, size),
             .forms = &group->forms[first],
             .form_count = size,
             .log_weight =
