@@ -106,7 +106,7 @@ static void set_priors(const struct wa_run *run, double last_volume_mL, double m
     experiment->ln_noise_reading = noise_prior(&c->reading_uncertainty, 1.0 / mV_per_pH,
                                                default_reading_noise, default_ln_reading_noise_u);
     /* A burette is chosen to suit the volume: a microburette is read finer than a large one. */
-    const double volume_noise = fmin(fmax(6e-4 * last_volume_mL, 2e-4), 0.02);
+    const double volume_noise = fmin(fmax(1e-3 * last_volume_mL, 3e-4), 0.012);
     experiment->ln_noise_volume =
         noise_prior(&c->volume_uncertainty, 1.0, volume_noise, default_ln_volume_noise_u);
     experiment->background = c->background.known ? fmax(c->background.quantity.value, 0.0) : 0.0;

@@ -20,10 +20,13 @@ struct wa_layout {
     int weak;      /**< of a weak titrant, -1 when there is none */
 };
 
-/** The two noise levels as standard deviations. */
+/** The two noise levels as standard deviations, and how well they are known. */
 struct wa_noise {
-    double reading; /**< pH */
-    double volume;  /**< mL */
+    double reading;             /**< pH */
+    double volume;              /**< mL */
+    double variance_ln_reading; /**< posterior variance of ln reading */
+    double variance_ln_volume;
+    double log_determinant; /**< ln det of the information about both logarithms, priors in */
 };
 
 /** Everything known about one point at one parameter vector. */
@@ -60,10 +63,16 @@ double wa_noise_log_likelihood(double residual, double variance, double *inlier)
  * One round of Fisher scoring for the noise levels, given expected squared residuals.
  * @param[in]     square  squared residual plus its variance by the parameters, one a point
  * @param[in]     weight  probability of being no outlier, one a point
- * @param[in,out] noise   levels
- * @return ln of the determinant of the information about both logarithms, priors included
+ * @param[in,out] noise   levels and what is known of them
  */
-double wa_noise_update(const struct wa_experiment *experiment, const struct wa_point_model *points,
-                       const double *square, const double *weight, struct wa_noise *noise);
+void wa_noise_update(const struct wa_experiment *experiment, const struct wa_point_model *points,
+                     const double *square, const double *weight, struct wa_noise *noise);
+
+/**
+ * The levels that stand for their whole posterior when parameters are to be given uncertainties:
+ * the mean of the variance of a log-normal is above the square of its mode, and the few points of
+ * a jump leave the volume's noise poorly known.
+ */
+struct wa_noise wa_noise_marginal(const struct wa_noise *noise);
 
 #endif

@@ -52,12 +52,11 @@ static void add_point(const struct wa_noise *noise, const struct wa_point_model 
     score->information[2] += 2.0 * weight * share_volume * share_volume;
 }
 
-double wa_noise_update(const struct wa_experiment *experiment, const struct wa_point_model *points,
-                       const double *square, const double *weight, struct wa_noise *noise)
+void wa_noise_update(const struct wa_experiment *experiment, const struct wa_point_model *points,
+                     const double *square, const double *weight, struct wa_noise *noise)
 {
     const struct wa_prior *reading = &experiment->ln_noise_reading;
     const struct wa_prior *volume = &experiment->ln_noise_volume;
-    double determinant = 1.0;
     for (int round = 0; round < 3; round++) {
         const double precision_reading = 1.0 / (reading->u * reading->u);
         const double precision_volume = 1.0 / (volume->u * volume->u);
@@ -69,8 +68,8 @@ double wa_noise_update(const struct wa_experiment *experiment, const struct wa_p
         for (size_t p = 0; p < experiment->count; p++) {
             add_point(noise, &points[p], square[p], weight[p], &score);
         }
-        determinant = score.information[0] * score.information[2] -
-                      score.information[1] * score.information[1];
+        const double determinant = score.information[0] * score.information[2] -
+                                   score.information[1] * score.information[1];
         const double step_reading =
             (score.information[2] * score.gradient[0] - score.information[1] * score.gradient[1]) /
             determinant;
@@ -79,6 +78,16 @@ double wa_noise_update(const struct wa_experiment *experiment, const struct wa_p
             determinant;
         noise->reading *= exp(fmin(fmax(step_reading, -1.0), 1.0));
         noise->volume *= exp(fmin(fmax(step_volume, -1.0), 1.0));
+        noise->variance_ln_reading = score.information[2] / determinant;
+        noise->variance_ln_volume = score.information[0] / determinant;
+        noise->log_determinant = log(determinant);
     }
-    return log(determinant);
+}
+
+struct wa_noise wa_noise_marginal(const struct wa_noise *noise)
+{
+    struct wa_noise marginal = *noise;
+    marginal.reading *= exp(noise->variance_ln_reading);
+    marginal.volume *= exp(noise->variance_ln_volume);
+    return marginal;
 }

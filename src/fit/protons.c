@@ -162,6 +162,7 @@ enum wa_status wa_proton_study_run(const struct wa_experiment *experiment,
 {
     const bool base = experiment->titrant_is_base;
     double best = -INFINITY;
+    int vain = 0;
     *study = (struct wa_proton_study){.count = 0};
     for (int protons = 1; protons <= WA_GENERIC_STEPS_MAX; protons++) {
         double best_here = -INFINITY;
@@ -184,7 +185,9 @@ enum wa_status wa_proton_study_run(const struct wa_experiment *experiment,
                 best_here = fmax(best_here, evidence);
             }
         }
-        if (best_here < best - hopeless) {
+        /* One count may be worse than both its neighbours; two in a row end the search. */
+        vain = best_here < best - hopeless ? vain + 1 : 0;
+        if (vain == 2) {
             break;
         }
         best = fmax(best, best_here);

@@ -40,7 +40,6 @@ struct work {
     gsl_vector *scratch;
     gsl_multifit_nlinear_workspace *solver;
     struct wa_noise noise;
-    double log_determinant_noise;
     double log_determinant;
 };
 
@@ -266,8 +265,7 @@ static bool iterate(struct work *work, int most_iterations)
         weigh(work);
         expect_squares(work);
         const struct wa_noise before = work->noise;
-        work->log_determinant_noise = wa_noise_update(work->experiment, work->points, work->square,
-                                                      work->inlier, &work->noise);
+        wa_noise_update(work->experiment, work->points, work->square, work->inlier, &work->noise);
         const double noise_move = fmax(fabs(log(work->noise.reading / before.reading)),
                                        fabs(log(work->noise.volume / before.volume)));
         if (move < settled && noise_move < settled) {
@@ -300,7 +298,7 @@ static double log_evidence(struct work *work, double log_likelihood)
     }
     sum += log_prior_of_noise(&work->experiment->ln_noise_reading, work->noise.reading);
     sum += log_prior_of_noise(&work->experiment->ln_noise_volume, work->noise.volume);
-    return sum - 0.5 * work->log_determinant - 0.5 * work->log_determinant_noise;
+    return sum - 0.5 * work->log_determinant - 0.5 * work->noise.log_determinant;
 }
 
 static void store_points(const struct work *work, struct wa_fit *fit)
@@ -345,7 +343,13 @@ static void store(struct work *work, struct wa_fit *fit)
     store_points(work, fit);
     wa_model_titration(work->experiment, work->sample, work->parameters, work->value, work->count,
                        &fit->titration, &layout);
-    store_parameters(work, fit);
+    work->noise = wa_noise_marginal(&work->noise);
+    weigh(work);
+    if (inform(work)) {
+        store_parameters(work, fit);
+    } else {
+        fit->converged = false;
+    }
 }
 
 static bool allocate_fit(size_t points, size_t count, struct wa_fit *fit)

@@ -5,8 +5,9 @@
 #include <stdio.h>
 #include <stdlib.h>
 
-static const double least_unknown = 0.1;  /* the table alone never rules out a charge */
-static const double edge_of_window = 0.3; /* pH */
+static const double least_unknown = 0.1;   /* the table alone never rules out a charge */
+static const double davies_trusted = 0.05; /* mol/L */
+static const double edge_of_window = 0.3;  /* pH */
 
 /* Charge that the acid's species starts from. */
 static int start_charge(const struct wa_generic *generic)
@@ -100,6 +101,13 @@ static double apparent_shift(const struct wa_generic *generic, int step)
     return -(2 * z - 1) * log10_gamma;
 }
 
+/* What the Davies equation leaves open for one step beyond its coefficient (design 2.2). */
+static double davies_step_u(const struct wa_generic *generic, int step)
+{
+    const int z = generic->charge - step;
+    return generic->fit.ionic_strength > davies_trusted ? 0.02 * abs(1 - 2 * z) / 2.0 : 0.0;
+}
+
 /* Whether a strong acid would fit as well: then the constant is only bounded from above. */
 static enum wa_status could_be_strong(const struct wa_experiment *experiment,
                                       const struct wa_generic *generic, int step, bool *strong,
@@ -181,7 +189,8 @@ static enum wa_status fill_pKa(const struct wa_identification *work, int k,
         const int index = wa_fit_find(&generic->fit, WA_PARAMETER_PK, 0, step);
         if (weight > 0.0 && index >= 0) {
             const struct wa_parameter *parameter = &generic->fit.parameters[index];
-            add_moment(&thermodynamic, weight, parameter->value, parameter->u);
+            const double activity_u = davies_step_u(generic, step);
+            add_moment(&thermodynamic, weight, parameter->value, hypot(parameter->u, activity_u));
             add_moment(&apparent, weight, parameter->value + apparent_shift(generic, step),
                        parameter->u);
         }
