@@ -71,6 +71,15 @@ enum wa_status wa_mixture_solve(const struct wa_mixture *mixture, double pH_gues
                                 struct wa_solution *solution, struct wa_sensitivity *sensitivity,
                                 struct wa_error *error) WA_MUST_USE;
 
+/**
+ * The same from a start near the solution, as after a small change of a parameter: half the cost.
+ * @param[in] ionic_guess  mol/L, 0 when unknown
+ */
+enum wa_status wa_mixture_solve_near(const struct wa_mixture *mixture, double pH_guess,
+                                     double ionic_guess, struct wa_solution *solution,
+                                     struct wa_sensitivity *sensitivity,
+                                     struct wa_error *error) WA_MUST_USE;
+
 /** One acid system in a titration. */
 struct wa_titration_component {
     struct wa_system system;

@@ -12,7 +12,7 @@ static const double step_limit = 4.0; /* largest step in ln a(H+) */
 static const double charge_tolerance = 1e-10;
 static const double charge_acceptable = 1e-6;       /* where rounding allows no better */
 static const double sqrt_hold = 1.4142135623730951; /* square root of WA_DAVIES_HOLD */
-static const double step_tolerance = 1e-7; /* quadratic convergence squares this once more */
+static const double step_tolerance = 1e-6; /* quadratic convergence squares this once more */
 
 /* Moments of the charge over the species of one component, by the fractions at hand. */
 struct moments {
@@ -346,6 +346,13 @@ enum wa_status wa_mixture_solve(const struct wa_mixture *mixture, double pH_gues
                                 struct wa_solution *solution, struct wa_sensitivity *sensitivity,
                                 struct wa_error *error)
 {
+    return wa_mixture_solve_near(mixture, pH_guess, 0.0, solution, sensitivity, error);
+}
+
+enum wa_status wa_mixture_solve_near(const struct wa_mixture *mixture, double pH_guess,
+                                     double ionic_guess, struct wa_solution *solution,
+                                     struct wa_sensitivity *sensitivity, struct wa_error *error)
+{
     struct balance balance;
     if (!mixture_is_finite(mixture)) {
         return wa_fail(error, WA_ERROR_NUMERIC, NULL, 0,
@@ -353,13 +360,15 @@ enum wa_status wa_mixture_solve(const struct wa_mixture *mixture, double pH_gues
     }
     const double Kw = exp(-ln10 * mixture->medium->pKw);
     const double guess = isfinite(pH_guess) ? pH_guess : 7.0;
-    struct state state = {
-        .x = -ln10 * fmin(fmax(guess, -2.0), 16.0),
-        .s = 0.1,
-    };
-    /* The ionic strength at the guess is a far better start than any fixed one. */
-    evaluate(mixture, &state, Kw, &balance);
-    state.s = sqrt(balance.ionic);
+    struct state state = {.x = -ln10 * fmin(fmax(guess, -2.0), 16.0)};
+    if (ionic_guess > 0.0) {
+        state.s = sqrt(ionic_guess);
+    } else {
+        /* The ionic strength at the guess is a far better start than any fixed one. */
+        state.s = 0.1;
+        evaluate(mixture, &state, Kw, &balance);
+        state.s = sqrt(balance.ionic);
+    }
     if (!solve_newton(mixture, Kw, &state, &balance) &&
         (!solve_bracketed(mixture, Kw, &state, &balance) ||
          !(fabs(balance.charge) < charge_acceptable * balance.scale))) {

@@ -46,6 +46,7 @@ void wa_model_titration(const struct wa_experiment *experiment,
 /**
  * Expected readings at every point and, when `jacobian` is not NULL, their derivatives by every
  * parameter (point by point, `count` to a row).
+ * @param[in,out] points  zeroed, or as an earlier evaluation left them: a start for this one
  */
 enum wa_status wa_model_evaluate(const struct wa_experiment *experiment,
                                  const struct wa_sample_model *sample,

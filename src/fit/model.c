@@ -265,9 +265,15 @@ enum wa_status wa_model_evaluate(const struct wa_experiment *experiment,
     for (size_t p = 0; p < experiment->count; p++) {
         struct wa_solution solution;
         const double volume = experiment->volume_mL[p];
-        const double guess = 7.0 + (experiment->reading[p] - 7.0 - offset) / slope;
+        struct wa_mixture mixture;
+        /* The last evaluation is the best start, the measured reading the first. */
+        const double ionic_guess = points[p].ionic_strength;
+        const double guess = ionic_guess > 0.0
+                                 ? points[p].pH
+                                 : 7.0 + (experiment->reading[p] - 7.0 - offset) / slope;
+        wa_titration_mixture(&titration, volume, &mixture);
         const enum wa_status status =
-            wa_titration_pH(&titration, volume, guess, &solution, &sensitivity, error);
+            wa_mixture_solve_near(&mixture, guess, ionic_guess, &solution, &sensitivity, error);
         if (status != WA_OK) {
             return status;
         }

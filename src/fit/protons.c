@@ -1,12 +1,15 @@
+#include "fit/fit_internal.h"
 #include "fit/generic_internal.h"
 
 #include <math.h>
 #include <stdlib.h>
+#include <string.h>
 
 /* Prior weight of n protons: the shares among the acids that laboratories meet, common practice. */
 static const double prior_by_steps[WA_GENERIC_STEPS_MAX] = {0.50, 0.28, 0.13, 0.05, 0.025, 0.015};
 static const double prior_already_lost = 0.25;
 static const int trial_iterations = 3;
+static const double hopeless_charge = 60.0; /* the charge alone moves it by less */
 static const double hopeless = 12.0; /* ln of the evidence ratio at which more protons are vain */
 
 /* A start nearer than this to another is the same. */
@@ -14,6 +17,9 @@ static const double same_start = 0.1;
 
 /* Starts of one generic acid. */
 #define STARTS_MAX (WA_INFLECTIONS_MAX * WA_GENERIC_STEPS_MAX + 2)
+
+/* Of these, how many are tried by a few rounds of a fit. */
+#define STARTS_TRIED 2
 
 static void add_start(double *amount, int *count, double value)
 {
@@ -49,40 +55,101 @@ static int start_amounts(const struct wa_experiment *experiment, const struct wa
     return count;
 }
 
-/* Fit from each start for a few rounds, then bring the best to convergence. */
+/* How well a start describes the points, to within a blunt tolerance. */
+static enum wa_status score_start(const struct wa_experiment *experiment,
+                                  const struct wa_sample_model *sample, const double *start,
+                                  struct wa_point_model *points, double *score,
+                                  struct wa_error *error)
+{
+    static const struct wa_noise blunt = {.reading = 0.15, .volume = 0.0};
+    struct wa_parameter parameters[WA_PARAMETERS_MAX];
+    const int count = wa_fit_parameters(experiment, sample, parameters);
+    memset(points, 0, experiment->count * sizeof *points);
+    *score = -INFINITY;
+    if (wa_model_evaluate(experiment, sample, parameters, start, count, points, NULL, error) !=
+        WA_OK) {
+        return error->status == WA_ERROR_MEMORY ? WA_ERROR_MEMORY : WA_OK;
+    }
+    const double last = experiment->volume_mL[experiment->count - 1];
+    struct wa_noise noise = blunt;
+    noise.volume = 0.01 * last;
+    *score = 0.0;
+    for (size_t p = 0; p < experiment->count; p++) {
+        double inlier;
+        *score += wa_noise_log_likelihood(experiment->reading[p] - points[p].expected,
+                                          wa_noise_variance(&noise, &points[p]), &inlier);
+    }
+    return WA_OK;
+}
+
+/* Values a fit starts from. */
+struct start {
+    double score;
+    double value[WA_PARAMETERS_MAX];
+};
+
+/* The best few starts by their scores, best first; returns how many. */
+static enum wa_status choose_starts(const struct wa_experiment *experiment,
+                                    const struct wa_curve *curve, const struct wa_generic *generic,
+                                    int protons, struct start chosen[STARTS_TRIED], int *count,
+                                    struct wa_error *error)
+{
+    double amount[STARTS_MAX];
+    const int starts = start_amounts(experiment, curve, protons, amount);
+    struct wa_point_model *points = calloc(experiment->count, sizeof *points);
+    enum wa_status status = points != NULL ? WA_OK : wa_fail_memory(error);
+    *count = 0;
+    for (int s = 0; status == WA_OK && s < starts; s++) {
+        struct start start;
+        if (!wa_generic_start(experiment, &generic->sample, amount[s], start.value)) {
+            status = wa_fail_memory(error);
+            break;
+        }
+        status =
+            score_start(experiment, &generic->sample, start.value, points, &start.score, error);
+        int at = *count < STARTS_TRIED ? (*count)++ : STARTS_TRIED;
+        while (at > 0 && start.score > chosen[at - 1].score) {
+            if (at < STARTS_TRIED) {
+                chosen[at] = chosen[at - 1];
+            }
+            at--;
+        }
+        if (at < STARTS_TRIED) {
+            chosen[at] = start;
+        }
+    }
+    free(points);
+    return status;
+}
+
+/* Fit from each of the best starts for a few rounds, then bring the best to convergence. */
 static enum wa_status fit_generic(const struct wa_experiment *experiment,
                                   const struct wa_curve *curve, struct wa_generic *generic,
                                   struct wa_error *error)
 {
     const int protons =
         experiment->titrant_is_base ? generic->step_count - generic->lost : generic->lost;
-    double amount[STARTS_MAX];
-    double start[WA_PARAMETERS_MAX], best_start[WA_PARAMETERS_MAX];
-    double best = -INFINITY;
     const struct wa_fit_options trial = {.most_iterations = trial_iterations};
-    const int starts = start_amounts(experiment, curve, protons, amount);
-    for (int s = 0; s < starts; s++) {
+    struct start chosen[STARTS_TRIED];
+    double best_value[WA_PARAMETERS_MAX];
+    double best = -INFINITY;
+    int starts;
+    enum wa_status status =
+        choose_starts(experiment, curve, generic, protons, chosen, &starts, error);
+    for (int s = 0; status == WA_OK && s < starts; s++) {
         struct wa_fit fit;
-        if (!wa_generic_start(experiment, &generic->sample, amount[s], start)) {
-            return wa_fail_memory(error);
-        }
-        const enum wa_status status =
-            wa_fit_run(experiment, &generic->sample, &trial, start, &fit, error);
-        if (status != WA_OK) {
-            return status;
-        }
-        if (isfinite(fit.log_evidence) && fit.misfit > 0.0 && fit.log_evidence > best) {
+        status = wa_fit_run(experiment, &generic->sample, &trial, chosen[s].value, &fit, error);
+        if (status == WA_OK && fit.misfit > 0.0 && fit.log_evidence > best) {
             best = fit.log_evidence;
             for (int i = 0; i < fit.parameter_count; i++) {
-                best_start[i] = fit.parameters[i].value;
+                best_value[i] = fit.parameters[i].value;
             }
         }
         wa_fit_free(&fit);
     }
-    if (!isfinite(best)) {
-        return WA_OK;
-    }
-    return wa_fit_run(experiment, &generic->sample, NULL, best_start, &generic->fit, error);
+    return status == WA_OK && isfinite(best)
+               ? wa_fit_run(experiment, &generic->sample, NULL, best_value, &generic->fit, error)
+               : status;
 }
 
 /* Protons that the run shows: those that are at least half removed (added) within the readings.
@@ -183,6 +250,9 @@ enum wa_status wa_proton_study_run(const struct wa_experiment *experiment,
                     return status;
                 }
                 best_here = fmax(best_here, evidence);
+                if (evidence < best - hopeless_charge) {
+                    break;
+                }
             }
         }
         /* One count may be worse than both its neighbours; two in a row end the search. */

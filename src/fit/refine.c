@@ -1,20 +1,23 @@
-/* The refinement itself: least squares by GSL with frozen weights, alternating with the weights,
- * the outlier probabilities and the noise levels, until nothing moves. Each round is a step of an
- * expectation-maximisation for the likelihood in noise.c, so that the likelihood never falls. */
+/* The refinement itself: a damped Gauss-Newton step with frozen weights, then new weights, outlier
+ * probabilities and noise levels, until nothing moves: an expectation-maximisation for the
+ * likelihood in noise.c. GSL's trust regions are not used because they would start afresh in every
+ * round, and crawl along directions that only the priors determine; with every prior an
+ * observation, the normal equations are well conditioned and a full step nearly always serves. */
 #include "fit/fit_internal.h"
 
 #include <gsl/gsl_blas.h>
 #include <gsl/gsl_errno.h>
 #include <gsl/gsl_linalg.h>
-#include <gsl/gsl_multifit_nlinear.h>
 
 #include <math.h>
 #include <stdlib.h>
 #include <string.h>
 
 static const int default_iterations = 60;
-static const size_t steps_a_round = 1; /* more would polish weights that are about to move */
-static const double settled = 5e-3;    /* in posterior standard deviations */
+static const int halvings = 8;
+static const double longest_pK_step = 1.5;
+static const double longest_ln_step = 0.7;
+static const double settled = 5e-3; /* in posterior standard deviations */
 
 /* lg 4: two alike and independent sites; the softness lets hydrogen-bonded pairs pass. */
 static const double alike_spacing = 0.60205999132796239;
@@ -38,7 +41,8 @@ struct work {
     bool evaluated;
     gsl_matrix *information;
     gsl_vector *scratch;
-    gsl_multifit_nlinear_workspace *solver;
+    gsl_vector *step;
+    gsl_vector *trial;
     struct wa_noise noise;
     double log_determinant;
 };
@@ -94,63 +98,6 @@ static int evaluate(struct work *work, const gsl_vector *deviation)
                           work->count, work->points, work->jacobian, &error) == WA_OK;
     gsl_vector_memcpy(work->evaluated_at, deviation);
     return work->evaluated ? GSL_SUCCESS : GSL_EFAILED;
-}
-
-static int residual_callback(const gsl_vector *deviation, void *data, gsl_vector *residual)
-{
-    struct work *work = data;
-    if (evaluate(work, deviation) != GSL_SUCCESS) {
-        return GSL_EFAILED;
-    }
-    size_t row = 0;
-    for (size_t p = 0; p < work->experiment->count; p++) {
-        const double difference = work->points[p].expected - work->experiment->reading[p];
-        gsl_vector_set(residual, row++, sqrt(work->precision[p]) * difference);
-    }
-    for (int i = 0; i < work->count; i++) {
-        gsl_vector_set(residual, row++, gsl_vector_get(deviation, (size_t)i));
-    }
-    for (size_t hinge = 0; row < residual->size; hinge++) {
-        int low, high;
-        gsl_vector_set(residual, row++,
-                       hinge_pair(work, hinge, &low, &high) ? hinge_residual(work, low, high)
-                                                            : 0.0);
-    }
-    return GSL_SUCCESS;
-}
-
-static int jacobian_callback(const gsl_vector *deviation, void *data, gsl_matrix *jacobian)
-{
-    struct work *work = data;
-    if (evaluate(work, deviation) != GSL_SUCCESS) {
-        return GSL_EFAILED;
-    }
-    const size_t count = (size_t)work->count;
-    size_t row = 0;
-    for (size_t p = 0; p < work->experiment->count; p++, row++) {
-        const double root = sqrt(work->precision[p]);
-        for (size_t i = 0; i < count; i++) {
-            gsl_matrix_set(jacobian, row, i,
-                           root * work->jacobian[p * count + i] * work->parameters[i].prior.u);
-        }
-    }
-    for (size_t i = 0; i < count; i++, row++) {
-        for (size_t j = 0; j < count; j++) {
-            gsl_matrix_set(jacobian, row, j, i == j ? 1.0 : 0.0);
-        }
-    }
-    for (size_t hinge = 0; row < jacobian->size1; hinge++, row++) {
-        gsl_vector_view line = gsl_matrix_row(jacobian, row);
-        int low, high;
-        gsl_vector_set_zero(&line.vector);
-        if (hinge_pair(work, hinge, &low, &high) && hinge_residual(work, low, high) > 0.0) {
-            gsl_vector_set(&line.vector, (size_t)low,
-                           work->parameters[low].prior.u / alike_softness);
-            gsl_vector_set(&line.vector, (size_t)high,
-                           -work->parameters[high].prior.u / alike_softness);
-        }
-    }
-    return GSL_SUCCESS;
 }
 
 /* Freeze the weights at the current parameters; returns the log likelihood. */
@@ -218,51 +165,114 @@ static void expect_squares(struct work *work)
     }
 }
 
-/* Least squares with frozen weights; false when the model cannot be evaluated at the start. */
-static bool solve_round(struct work *work)
+/* Gradient of the frozen objective: minus half the weighted squares, priors and hinges in. */
+static void gradient(const struct work *work, gsl_vector *slope)
 {
-    gsl_multifit_nlinear_fdf system = {
-        .f = residual_callback,
-        .df = jacobian_callback,
-        .n = work->solver->f->size,
-        .p = (size_t)work->count,
-        .params = work,
-    };
-    int info;
-    if (gsl_multifit_nlinear_init(work->deviation, &system, work->solver) != GSL_SUCCESS) {
-        return false;
+    const size_t count = (size_t)work->count;
+    gsl_vector_memcpy(slope, work->deviation);
+    gsl_vector_scale(slope, -1.0);
+    for (size_t p = 0; p < work->experiment->count; p++) {
+        const double pull =
+            work->precision[p] * (work->experiment->reading[p] - work->points[p].expected);
+        for (size_t i = 0; i < count; i++) {
+            *gsl_vector_ptr(slope, i) +=
+                pull * work->jacobian[p * count + i] * work->parameters[i].prior.u;
+        }
     }
-    gsl_multifit_nlinear_driver(steps_a_round, 1e-7, 1e-7, 0.0, NULL, NULL, &info, work->solver);
-    return true;
+    for (size_t hinge = 0; hinge < hinge_count(work->sample); hinge++) {
+        int low, high;
+        if (hinge_pair(work, hinge, &low, &high)) {
+            const double residual = hinge_residual(work, low, high) / alike_softness;
+            *gsl_vector_ptr(slope, (size_t)low) -= residual * work->parameters[low].prior.u;
+            *gsl_vector_ptr(slope, (size_t)high) += residual * work->parameters[high].prior.u;
+        }
+    }
 }
 
-/* Largest move between two vectors of deviations, in posterior standard deviations: the norm in
- * the metric of the information matrix bounds each of them. */
-static double move_between(struct work *work, const gsl_vector *before, const gsl_vector *after)
+/* The frozen objective at the parameters evaluated last. */
+static double objective(const struct work *work)
 {
-    gsl_vector_memcpy(work->scratch, after);
-    gsl_vector_sub(work->scratch, before);
-    gsl_blas_dtrmv(CblasLower, CblasTrans, CblasNonUnit, work->information, work->scratch);
-    return gsl_blas_dnrm2(work->scratch);
+    double sum = 0.0, square;
+    for (size_t p = 0; p < work->experiment->count; p++) {
+        const double residual = work->experiment->reading[p] - work->points[p].expected;
+        sum -= 0.5 * work->precision[p] * residual * residual;
+    }
+    for (size_t hinge = 0; hinge < hinge_count(work->sample); hinge++) {
+        int low, high;
+        if (hinge_pair(work, hinge, &low, &high)) {
+            const double residual = hinge_residual(work, low, high);
+            sum -= 0.5 * residual * residual;
+        }
+    }
+    gsl_blas_ddot(work->evaluated_at, work->evaluated_at, &square);
+    return sum - 0.5 * square;
+}
+
+/* The part of a step that keeps every parameter within its longest step. */
+static double step_length(const struct work *work, const gsl_vector *step)
+{
+    double length = 1.0;
+    for (int i = 0; i < work->count; i++) {
+        const struct wa_parameter *parameter = &work->parameters[i];
+        const double change = fabs(gsl_vector_get(step, (size_t)i)) * parameter->prior.u;
+        const bool logarithm = parameter->kind == WA_PARAMETER_LN_AMOUNT ||
+                               parameter->kind == WA_PARAMETER_LN_TITRANT ||
+                               parameter->kind == WA_PARAMETER_LN_VOLUME;
+        if (parameter->kind == WA_PARAMETER_PK) {
+            length = fmin(length, longest_pK_step / fmax(change, 1e-300));
+        } else if (logarithm) {
+            length = fmin(length, longest_ln_step / fmax(change, 1e-300));
+        }
+    }
+    return length;
+}
+
+/* One damped step with frozen weights, taken; `move` is its length in posterior standard
+ * deviations. False when the model cannot be evaluated or nothing improves. */
+static bool take_step(struct work *work, double *move)
+{
+    gsl_vector *step = work->step, *trial = work->trial;
+    if (!inform(work)) {
+        return false;
+    }
+    gradient(work, step);
+    gsl_linalg_cholesky_svx(work->information, step);
+    const double before = objective(work);
+    double length = step_length(work, step);
+    for (int halving = 0; halving <= halvings; halving++, length *= 0.5) {
+        gsl_vector_memcpy(trial, step);
+        gsl_vector_scale(trial, length);
+        gsl_vector_memcpy(work->scratch, trial);
+        gsl_blas_dtrmv(CblasLower, CblasTrans, CblasNonUnit, work->information, work->scratch);
+        *move = gsl_blas_dnrm2(work->scratch);
+        gsl_vector_add(trial, work->deviation);
+        if (evaluate(work, trial) == GSL_SUCCESS &&
+            objective(work) >= before - 1e-9 * fabs(before)) {
+            gsl_vector_memcpy(work->deviation, trial);
+            return true;
+        }
+    }
+    /* Rounding leaves nothing to gain: the last point stands. */
+    *move = 0.0;
+    return evaluate(work, work->deviation) == GSL_SUCCESS;
 }
 
 /* Alternate until parameters and noise stand still. */
 static bool iterate(struct work *work, int most_iterations)
 {
+    if (evaluate(work, work->deviation) != GSL_SUCCESS) {
+        return false;
+    }
     for (int round = 0; round < most_iterations; round++) {
-        if (evaluate(work, work->deviation) != GSL_SUCCESS) {
+        double move;
+        weigh(work);
+        if (!take_step(work, &move)) {
             return false;
         }
         weigh(work);
-        if (!solve_round(work)) {
+        if (!inform(work)) {
             return false;
         }
-        if (evaluate(work, work->solver->x) != GSL_SUCCESS || !inform(work)) {
-            return false;
-        }
-        const double move = move_between(work, work->deviation, work->solver->x);
-        gsl_vector_memcpy(work->deviation, work->solver->x);
-        weigh(work);
         expect_squares(work);
         const struct wa_noise before = work->noise;
         wa_noise_update(work->experiment, work->points, work->square, work->inlier, &work->noise);
@@ -364,8 +374,6 @@ static bool allocate_fit(size_t points, size_t count, struct wa_fit *fit)
 
 static bool allocate_work(size_t points, size_t count, struct work *work)
 {
-    gsl_multifit_nlinear_parameters settings = gsl_multifit_nlinear_default_parameters();
-    settings.solver = gsl_multifit_nlinear_solver_cholesky;
     work->points = calloc(points, sizeof *work->points);
     work->jacobian = calloc(points * count, sizeof *work->jacobian);
     work->precision = calloc(points, sizeof *work->precision);
@@ -376,12 +384,12 @@ static bool allocate_work(size_t points, size_t count, struct work *work)
     work->evaluated_at = gsl_vector_calloc(count);
     work->scratch = gsl_vector_calloc(count);
     work->information = gsl_matrix_calloc(count, count);
-    work->solver = gsl_multifit_nlinear_alloc(gsl_multifit_nlinear_trust, &settings,
-                                              points + count + hinge_count(work->sample), count);
+    work->step = gsl_vector_calloc(count);
+    work->trial = gsl_vector_calloc(count);
     return work->points != NULL && work->jacobian != NULL && work->precision != NULL &&
            work->square != NULL && work->inlier != NULL && work->value != NULL &&
            work->deviation != NULL && work->evaluated_at != NULL && work->scratch != NULL &&
-           work->information != NULL && work->solver != NULL;
+           work->information != NULL && work->step != NULL && work->trial != NULL;
 }
 
 static void free_work(struct work *work)
@@ -396,7 +404,8 @@ static void free_work(struct work *work)
     gsl_vector_free(work->evaluated_at);
     gsl_vector_free(work->scratch);
     gsl_matrix_free(work->information);
-    gsl_multifit_nlinear_free(work->solver);
+    gsl_vector_free(work->step);
+    gsl_vector_free(work->trial);
 }
 
 enum wa_status wa_fit_run(const struct wa_experiment *experiment,
