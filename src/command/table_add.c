@@ -136,9 +136,10 @@ static void set_default(const struct add_call *call, enum field field, char text
     const char *simple = field == TEMPERATURE ? "25"
                          : field == SOURCE    ? "from memory"
                          : field == CHARGE || field == IONIC_STRENGTH || field == LOST ? "0"
-                         : field == FORM_NAME    ? call->answer[NAME]
-                         : field == FORM_FORMULA ? call->answer[FORMULA]
-                                                 : "";
+                         : field == FORM_NAME ? call->answer[NAME]
+                         : field == FORM_FORMULA && strcmp(call->answer[CHARGE], "0") == 0
+                             ? call->answer[FORMULA]
+                             : "";
     if (field == KEY) {
         key_from_name(call->answer[NAME], text, ANSWER_MAX);
         return;
@@ -177,7 +178,9 @@ static bool all_needed_given(const struct add_call *call)
             return false;
         }
     }
-    return true;
+    /* What is weighed is neutral: a charged species cannot stand in for it. */
+    const char *charge = call->given[CHARGE];
+    return charge == NULL || strcmp(charge, "0") == 0 || call->given[FORM_FORMULA] != NULL;
 }
 
 /* Fill every answer from the options, by asking, or by what an empty answer means. @return exit
@@ -419,6 +422,13 @@ int table_add(int argument_count, char **arguments)
     int status = table_open(&call->common, &table);
     if (status == 0) {
         status = collect_answers(call);
+        if (status == 0 && call->acid == NULL &&
+            wa_table_find_acid(&table, call->answer[KEY]) >= 0) {
+            fprintf(stderr,
+                    "whichacid: the table has an acid '%s' already; yours stands in its place "
+                    "wherever your folder is laid over it.\n",
+                    call->answer[KEY]);
+        }
         if (status == 0) {
             status = add_rows(call, &table);
         }

@@ -51,8 +51,7 @@ static void print_step(FILE *stream, const struct acid_page *page, int number)
         fprintf(stream, "  %8s", "-");
     }
     fprintf(stream, "  %s%s%s%s\n", step->from_memory ? "from memory" : "sourced",
-            step->row_count > 1 ? ", combined (Birge 1932)" : "",
-            step->converted ? ", converted" : "",
+            step->row_count > 1 ? ", combined" : "", step->converted ? ", converted" : "",
             step->birge_ratio > 2.0 ? ", sources disagree" : "");
 }
 
@@ -118,6 +117,16 @@ static void print_rows(FILE *stream, const struct acid_page *page)
     }
 }
 
+static bool any_combined(const struct wa_acid *acid)
+{
+    for (int i = 0; i < acid->step_count; i++) {
+        if (acid->steps[i].row_count > 1 || acid->steps[i].converted) {
+            return true;
+        }
+    }
+    return false;
+}
+
 static void print_constants(FILE *stream, const struct acid_page *page)
 {
     const struct wa_acid *acid = &page->table->acids[page->acid];
@@ -125,6 +134,12 @@ static void print_constants(FILE *stream, const struct acid_page *page)
     fputs("  step  charge  pKa               ΔH/(kJ/mol)\n", stream);
     for (int i = 0; i < acid->step_count; i++) {
         print_step(stream, page, i + 1);
+    }
+    if (any_combined(acid)) {
+        fputs("  ", stream);
+        print_wrapped(stream, 2, 2,
+                      "Combined: mean weighted by 1/u², u enlarged by the Birge ratio (1932) where "
+                      "the sources disagree. Converted: brought to I = 0 by the Davies equation.");
     }
     if (fabs(page->temperature_C - 25.0) > 1e-9 || page->ionic_strength > 0.0) {
         print_elsewhere(stream, page);
@@ -166,7 +181,12 @@ static void print_form(FILE *stream, const struct wa_form *form)
                  form->melting_point_C,
                  strchr(form->melting_point, 'd') != NULL ? " and decomposes" : "");
     }
-    fprintf(stream, "  %s (%s)%s\n    ", form->name, form->key, form->from_user ? " (yours)" : "");
+    char title[512];
+    snprintf(title, sizeof title, "%s (%s)%s", form->name, form->key,
+             form->from_user ? " (yours)" : "");
+    fputs("  ", stream);
+    print_wrapped(stream, 2, 4, title);
+    fputs("    ", stream);
     print_wrapped(stream, 4, 4, text);
     if (form->care[0] != '\0') {
         fputs("    care: ", stream);
@@ -248,12 +268,15 @@ static void print_landmarks_of(FILE *stream, const struct acid_page *page,
                            &landmarks)) {
         return;
     }
-    fprintf(stream, "  %s with %s: start %.2f", form->name, titrant, landmarks.start_pH);
-    if (!any_jump(&landmarks)) {
-        fputs(", no visible jump\n", stream);
+    bool visible = any_jump(&landmarks);
+    char text[512];
+    snprintf(text, sizeof text, "%s with %s: start %.2f%s", form->name, titrant, landmarks.start_pH,
+             visible ? "" : ", no visible jump");
+    fputs("  ", stream);
+    print_wrapped(stream, 2, 4, text);
+    if (!visible) {
         return;
     }
-    fputc('\n', stream);
     for (int i = 0; i < landmarks.count; i++) {
         print_end(stream, page, &landmarks, i);
     }

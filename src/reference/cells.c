@@ -8,8 +8,40 @@
 
 #define NUMBER_TEXT_MAX 40
 
+/* A plain decimal number of at most 15 digits: both the digits and the power of ten are exact in
+ * double, so their quotient is the nearest double. @return false when it is not as plain as that */
+static bool plain_number(const char *text, double *value)
+{
+    static const double powers[] = {1e0, 1e1, 1e2,  1e3,  1e4,  1e5,  1e6,  1e7,
+                                    1e8, 1e9, 1e10, 1e11, 1e12, 1e13, 1e14, 1e15};
+    bool negative = *text == '-';
+    double digits = 0.0;
+    int count = 0;
+    int behind = -1;
+    for (text += negative; *text != '\0'; text++) {
+        if (isdigit((unsigned char)*text) && count < 15) {
+            digits = digits * 10.0 + (*text - '0');
+            count++;
+            behind += behind >= 0;
+        } else if ((*text == '.' || *text == ',') && behind < 0) {
+            behind = 0;
+        } else {
+            return false;
+        }
+    }
+    if (count == 0) {
+        return false;
+    }
+    digits /= powers[behind > 0 ? behind : 0];
+    *value = negative ? -digits : digits;
+    return true;
+}
+
 bool table_number(const char *text, double *value)
 {
+    if (plain_number(text, value)) {
+        return true;
+    }
     char plain[NUMBER_TEXT_MAX];
     size_t length = 0;
     size_t marks = 0;

@@ -84,9 +84,13 @@ static bool is_utf8(const char *bytes, size_t size)
     const unsigned char *at = (const unsigned char *)bytes;
     const unsigned char *end = at + size;
     while (at < end) {
-        if (*at < 0x80) {
-            at++;
-            continue;
+        uint64_t eight = 0;
+        if (end - at >= (ptrdiff_t)sizeof eight) {
+            memcpy(&eight, at, sizeof eight);
+            if ((eight & UINT64_C(0x8080808080808080)) == 0) {
+                at += sizeof eight;
+                continue;
+            }
         }
         size_t length = utf8_length(at);
         if (length == 0) {
@@ -155,6 +159,7 @@ enum wa_status table_text_to_utf8(const char *path, char **bytes, size_t *size,
 struct splitter {
     char *at;
     char delimiter;
+    bool ends_cell[256]; /* signs that end an unquoted cell */
     long line;
     struct table_file *file;
     size_t row_capacity;
@@ -206,7 +211,15 @@ static const char *take_cell(struct splitter *splitter, bool *row_ends)
             read++;
         }
     }
-    while (*read != '\0' && *read != splitter->delimiter && *read != '\n' && *read != '\r') {
+    const bool *ends_cell = splitter->ends_cell;
+    if (write == read) {
+        /* Nothing was unquoted: the text stays where it is. */
+        while (!ends_cell[(unsigned char)*read]) {
+            read++;
+        }
+        write = read;
+    }
+    while (!ends_cell[(unsigned char)*read]) {
         *write = *read;
         write++;
         read++;
@@ -229,6 +242,10 @@ static const char *take_cell(struct splitter *splitter, bool *row_ends)
 static bool split_rows(struct splitter *splitter)
 {
     struct table_file *file = splitter->file;
+    splitter->ends_cell['\0'] = true;
+    splitter->ends_cell['\n'] = true;
+    splitter->ends_cell['\r'] = true;
+    splitter->ends_cell[(unsigned char)splitter->delimiter] = true;
     while (*splitter->at != '\0') {
         struct table_row row = {.line = splitter->line, .first = splitter->cell_count};
         bool row_ends = false;
@@ -417,6 +434,19 @@ static enum wa_status split_file(struct loader *loader, char *text, enum table_k
     return WA_OK;
 }
 
+/* FNV-1a (Fowler, Noll, Vo) over words of eight bytes instead of single ones, for speed. */
+static void hash_bytes(struct loader *loader, const char *bytes, size_t size)
+{
+    uint64_t hash = loader->hash ^ size;
+    for (size_t i = 0; i < size; i += sizeof hash) {
+        uint64_t word = 0;
+        memcpy(&word, bytes + i, size - i < sizeof word ? size - i : sizeof word);
+        hash = (hash ^ word) * UINT64_C(1099511628211);
+        hash ^= hash >> 32;
+    }
+    loader->hash = hash;
+}
+
 enum wa_status table_file_read(struct loader *loader, const char *path, enum table_kind wanted,
                                struct table_file *file, struct wa_error *error)
 {
@@ -427,9 +457,7 @@ enum wa_status table_file_read(struct loader *loader, const char *path, enum tab
     if (status != WA_OK) {
         return status;
     }
-    for (size_t i = 0; i < size; i++) {
-        loader->hash = (loader->hash ^ (unsigned char)bytes[i]) * UINT64_C(1099511628211);
-    }
+    hash_bytes(loader, bytes, size);
     status = table_text_to_utf8(path, &bytes, &size, error);
     if (status == WA_OK) {
         file->name = storage_copy(loader->table.storage, path, strlen(path));

@@ -116,9 +116,12 @@ static size_t place_of(const struct name_index *names, uint64_t hash, const char
     return place;
 }
 
+#define FIRST_CAPACITY 1024
+
 static bool widen(struct name_index *names)
 {
-    struct name_index wider = {.capacity = names->capacity == 0 ? 64 : names->capacity * 2};
+    struct name_index wider = {.capacity =
+                                   names->capacity == 0 ? FIRST_CAPACITY : names->capacity * 4};
     wider.entries = calloc(wider.capacity, sizeof *wider.entries);
     if (wider.entries == NULL) {
         return false;

@@ -124,6 +124,9 @@ static bool try_ions(struct search *search, int from, const struct composition *
 {
     const struct wa_table_storage *storage = search->storage;
     int most = 0;
+    if (charge == 0 && only_water(search, remainder)) {
+        return true;
+    }
     while (from < storage->ion_count &&
            (most = most_of(search, remainder, &storage->ions[from].composition)) == 0) {
         from++;
@@ -184,7 +187,7 @@ void spectators_find(const struct wa_table_storage *storage, const struct compos
     if (!composition_add(&remainder, -1.0, parts) || storage->hydrogen < 0 || storage->oxygen < 0) {
         return;
     }
-    write_remainder(storage, &remainder, spectators->remainder, sizeof spectators->remainder);
+    const struct composition whole = remainder;
     bool complete = no_atom_is_short(&search, &remainder);
     /* Carbon left over may be an ion that is not known here, whose charge nobody can check. */
     bool unknown = complete && storage->carbon >= 0 &&
@@ -194,5 +197,8 @@ void spectators_find(const struct wa_table_storage *storage, const struct compos
     take_single_ions(&search, &remainder, &charge, &z2);
     spectators->split = complete && try_ions(&search, 0, &remainder, charge, &z2);
     spectators->balanced = spectators->split || unknown;
+    if (!spectators->split) {
+        write_remainder(storage, &whole, spectators->remainder, sizeof spectators->remainder);
+    }
     spectators->z2 = spectators->split ? z2 : abs(spectators->charge);
 }
