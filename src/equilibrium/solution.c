@@ -12,7 +12,8 @@ static const double step_limit = 4.0; /* largest step in ln a(H+) */
 static const double charge_tolerance = 1e-10;
 static const double charge_acceptable = 1e-6;       /* where rounding allows no better */
 static const double sqrt_hold = 1.4142135623730951; /* square root of WA_DAVIES_HOLD */
-static const double step_tolerance = 1e-6; /* quadratic convergence squares this once more */
+static const double step_tolerance = 1e-6;     /* quadratic convergence squares this once more */
+static const double strength_tolerance = 1e-5; /* relative, of the root; squared too */
 
 /* Moments of the charge over the species of one component, by the fractions at hand. */
 struct moments {
@@ -216,7 +217,7 @@ static bool solve_newton(const struct wa_mixture *mixture, double Kw, struct sta
         if (!newton_step(mixture, balance, state, &dx, &ds)) {
             return false;
         }
-        const bool close = fabs(dx) < step_tolerance && fabs(ds) < step_tolerance;
+        const bool close = fabs(dx) < step_tolerance && fabs(ds) < strength_tolerance * state->s;
         /* A step back nearly as long as the last one is the start of a cycle about a kink, as
          * where a solid appears. */
         const bool swings = dx * previous < 0.0 && fabs(dx) > 0.5 * fabs(previous);
