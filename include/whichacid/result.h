@@ -3,7 +3,7 @@
 #ifndef WHICHACID_RESULT_H
 #define WHICHACID_RESULT_H
 
-#include "whichacid/fit.h"
+#include "whichacid/trace.h"
 
 /** Most candidates that are listed. */
 #define WA_CANDIDATES_MAX 40
@@ -122,6 +122,11 @@ struct wa_result {
     struct wa_experiment *experiments; /**< one a run; count 0 where none could be made */
     struct wa_fit best; /**< best generic fit of the first run; parameter_count 0: none */
     bool fitted;
+    struct wa_trace best_trace; /**< of `best`; count 0: none */
+    /** The winner's curve and the runner-up's, from their own fits of the first run; count 0:
+     * none. The runner-up is the next candidate of another acid system, else the next one. */
+    struct wa_trace candidate_traces[2];
+    size_t traced_candidates[2];                      /**< which of `candidates` they are of */
     struct wa_result_equivalence *equivalence_points; /**< of the first run */
     size_t equivalence_count;
     int proton_count;

@@ -68,6 +68,9 @@ void wa_result_free(struct wa_result *result)
     free_runs(result);
     free_lists(result);
     wa_fit_free(&result->best);
+    wa_trace_free(&result->best_trace);
+    wa_trace_free(&result->candidate_traces[0]);
+    wa_trace_free(&result->candidate_traces[1]);
     free(result->equivalence_points);
     free(result->unseen);
     free(result->molar_mass_assumes);
