@@ -16,7 +16,9 @@ enum {
     key_explain,
     key_each,
     key_json,
-    key_output
+    key_output,
+    key_figure,
+    key_figure_kind
 };
 
 static const char documentation[] =
@@ -63,6 +65,17 @@ static const struct argp_option own_options[] = {
      .doc = "the result as JSON; with --each a list of results",
      .group = 4},
     {.name = "output", .key = key_output, .arg = "FILE", .doc = "write to FILE", .group = 4},
+    {.name = "figure",
+     .key = key_figure,
+     .arg = "FILE",
+     .doc = "draw a figure into FILE, by its ending .svg, .pdf or .png",
+     .group = 4},
+    {.name = "figure-kind",
+     .key = key_figure_kind,
+     .arg = "KIND",
+     .doc = "what the figure shows: curve (if none is named), derivative, gran, residuals, "
+            "runner-up or species",
+     .group = 4},
     {0},
 };
 
@@ -70,6 +83,14 @@ static error_t finish(const struct identify_request *request, struct argp_state 
 {
     if (request->path_count == 0) {
         argp_error(state, "name at least one run to identify");
+        return EINVAL;
+    }
+    if (request->each && request->path_count > 1 && request->figure != NULL) {
+        argp_error(state, "a figure shows one sample: draw it for one file at a time");
+        return EINVAL;
+    }
+    if (request->figure_kind != NULL && request->figure == NULL) {
+        argp_error(state, "--figure-kind needs --figure FILE");
         return EINVAL;
     }
     size_t standard_inputs = 0;
@@ -118,6 +139,12 @@ static error_t parse(int key, char *argument, struct argp_state *state)
         return 0;
     case key_output:
         request->output = argument;
+        return 0;
+    case key_figure:
+        request->figure = argument;
+        return 0;
+    case key_figure_kind:
+        request->figure_kind = argument;
         return 0;
     default:
         return ARGP_ERR_UNKNOWN;

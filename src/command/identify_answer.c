@@ -5,6 +5,7 @@
 #include "base/file.h"
 #include "base/grow.h"
 #include "base/sha256.h"
+#include "whichacid/figure.h"
 #include "whichacid/report.h"
 
 #include <stdlib.h>
@@ -29,6 +30,7 @@ struct work {
     size_t among_capacity;
     struct input *inputs; /* as many as files */
     struct wa_report_options report;
+    enum wa_figure_kind figure_kind;
 };
 
 static bool is_in_table(const struct wa_table *table, const char *name)
@@ -127,6 +129,14 @@ static enum wa_status prepare(struct work *work, struct wa_error *error)
     if (status == WA_OK && request->explain != NULL &&
         !is_in_table(&work->table, request->explain)) {
         status = fail_unknown("--explain", request->explain, error);
+    }
+    /* A figure that cannot be written is refused before the work, not after it. */
+    enum wa_figure_format format;
+    if (status == WA_OK && request->figure != NULL) {
+        status = wa_figure_format_of(request->figure, &format, error);
+    }
+    if (status == WA_OK && request->figure_kind != NULL) {
+        status = wa_figure_kind_of(request->figure_kind, &work->figure_kind, error);
     }
     work->options.among = (const char *const *)work->among;
     work->options.among_count = work->among_count;
@@ -237,6 +247,9 @@ static enum wa_status answer_sample(struct work *work, size_t first, size_t coun
         status = add_inputs(work, first, count, &result, error);
         if (status == WA_OK) {
             status = write_result(work, &result, title, answer, error);
+        }
+        if (status == WA_OK && work->request->figure != NULL) {
+            status = wa_figure_write(&result, work->figure_kind, work->request->figure, error);
         }
         wa_result_free(&result);
     }

@@ -20,6 +20,8 @@ struct identify_request {
     const char *explain;
     const char *threshold;
     const char *output;
+    const char *figure;      /**< file, or NULL */
+    const char *figure_kind; /**< word, or NULL */
     bool json;
     bool each;
 };
