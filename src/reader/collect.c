@@ -168,14 +168,14 @@ enum wa_status wa_raw_collect(const struct wa_sheet *sheet, const struct wa_tabl
     list->volume_unit = list->volume_unit_assumed ? WA_UNIT_ML : list->volume_unit;
     list->reading_unit = reading_unit(reading, choice->kind, &list->reading_unit_assumed);
     bool after_words = false;
+    if (!wa_grow(&list->raw, &list->capacity, list->count + table->row_count, sizeof *list->raw)) {
+        return wa_fail_memory(error);
+    }
     for (size_t r = table->first_row; r < table->end_row; r++) {
         const struct wa_row *row = &sheet->rows[r];
         if (row->kind != WA_ROW_NUMBERS || row->used) {
             after_words = true;
             continue;
-        }
-        if (!wa_grow(&list->raw, &list->capacity, list->count + 1, sizeof *list->raw)) {
-            return wa_fail_memory(error);
         }
         struct wa_raw *raw = &list->raw[list->count];
         bool skip;

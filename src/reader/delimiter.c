@@ -96,7 +96,7 @@ static bool starts_column(const char *cell, size_t cell_length, const struct tok
 }
 
 /* A line of words: two spaces or more set cells apart; with single ones the words decide. */
-static size_t join_words(const struct token *tokens, size_t count, char *spaced)
+static size_t join_words(const struct token *tokens, size_t count, bool careful, char *spaced)
 {
     bool wide = false;
     for (size_t i = 1; i < count; i++) {
@@ -109,8 +109,9 @@ static size_t join_words(const struct token *tokens, size_t count, char *spaced)
         bool apart = true;
         if (i > 0) {
             const char *gap = tokens[i - 1].text + tokens[i - 1].length;
-            apart = wide ? tokens[i].text - gap > 1 || *gap == '\t'
-                         : starts_column(spaced + cell_start, at - cell_start, &tokens[i]);
+            apart =
+                wide ? tokens[i].text - gap > 1 || *gap == '\t'
+                     : careful && starts_column(spaced + cell_start, at - cell_start, &tokens[i]);
         }
         size_t before = at;
         at = put(spaced, at, apart ? '\x1F' : ' ', &tokens[i]);
@@ -119,7 +120,7 @@ static size_t join_words(const struct token *tokens, size_t count, char *spaced)
     return at;
 }
 
-size_t wa_sheet_join_spaces(const char *line, size_t length, char *spaced)
+size_t wa_sheet_join_spaces(const char *line, size_t length, bool careful, char *spaced)
 {
     struct token tokens[TOKENS_MAX];
     size_t count = split_tokens(line, length, tokens);
@@ -132,7 +133,7 @@ size_t wa_sheet_join_spaces(const char *line, size_t length, char *spaced)
     /* "0.1 M HCl (mL) pH 0.1 M HCl (mL) pH" holds two numbers and is a header all the same. */
     bool is_data = numbers >= 2 && (numbers * 3 >= count || (leads && numbers * 4 >= count));
     size_t joined =
-        is_data ? join_numbers(tokens, count, spaced) : join_words(tokens, count, spaced);
+        is_data ? join_numbers(tokens, count, spaced) : join_words(tokens, count, careful, spaced);
     spaced[joined] = '\0';
     return joined;
 }
@@ -180,7 +181,7 @@ static double line_score(const char *line, size_t length, char delimiter)
         return 0;
     }
     if (delimiter == ' ') {
-        length = wa_sheet_join_spaces(line, length, spaced);
+        length = wa_sheet_join_spaces(line, length, false, spaced);
         line = spaced;
         delimiter = '\x1F';
     }

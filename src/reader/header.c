@@ -238,7 +238,9 @@ static void split_words(const char *text, size_t length, struct words *words)
 
 static bool word_is(const struct words *words, size_t i, const char *name)
 {
-    return strlen(name) == words->length[i] && memcmp(words->word[i], name, words->length[i]) == 0;
+    size_t length = words->length[i];
+    return name[0] == words->word[i][0] && strncmp(words->word[i], name, length) == 0 &&
+           name[length] == '\0';
 }
 
 static bool has_any(const struct words *words, const char *const *list)

@@ -100,8 +100,8 @@ struct wa_row {
     uint16_t cell_count;
     uint16_t number_count; /**< cells that are numbers */
     uint32_t line;
-    enum wa_row_kind kind;
-    bool used; /**< as a note, a header or a heading */
+    uint8_t kind; /**< enum wa_row_kind */
+    bool used;    /**< as a note, a header or a heading */
 };
 
 struct wa_sheet {
@@ -114,6 +114,7 @@ struct wa_sheet {
     size_t cell_count, cell_capacity;
     struct wa_row *rows;
     size_t row_count, row_capacity;
+    size_t word_lines; /**< rows without two numbers so far */
 };
 
 /** Find the delimiter and split the text with libcsv. */
@@ -128,10 +129,11 @@ char wa_sheet_delimiter(const char *text, size_t length);
 /**
  * Rewrite a line that is delimited by runs of spaces so that one unit separator (0x1F) stands
  * between its cells; "(mL)" and "mL" stay with what they follow.
- * @param[out] spaced  at least length + 1 bytes
+ * @param[in]  careful  look at the words of a line to find where headers part
+ * @param[out] spaced   at least length + 1 bytes
  * @return length of the rewritten line
  */
-size_t wa_sheet_join_spaces(const char *line, size_t length, char *spaced);
+size_t wa_sheet_join_spaces(const char *line, size_t length, bool careful, char *spaced);
 
 /** Text of a cell, or an empty one where the row is shorter. */
 const char *wa_sheet_cell(const struct wa_sheet *sheet, const struct wa_row *row, size_t column,
@@ -200,6 +202,7 @@ struct wa_table_part {
     size_t header_end; /**< one past the last header row */
     struct wa_column columns[WA_COLUMNS_MAX];
     size_t column_count;
+    size_t row_count; /**< rows that hold numbers */
     int label_column; /**< tells runs apart, such as "sample"; -1 when there is none */
 };
 

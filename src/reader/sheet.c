@@ -10,6 +10,9 @@
 /* A quoted field may run over so many lines; beyond, the quote was a stray one. */
 #define QUOTED_LINES_MAX 8
 
+/* A table has few lines of words; beyond so many a text is prose and its words are not weighed. */
+#define WORD_LINES_MAX 2000
+
 /* libcsv's callbacks fill this. */
 struct filling {
     struct wa_sheet *sheet;
@@ -149,15 +152,17 @@ static bool add_line(struct wa_sheet *sheet, struct csv_parser *parser, const ch
     const char *fed = line + mark * comment;
     size_t fed_length = length - mark * comment;
     struct filling filling = {.sheet = sheet, .row = row};
-    if (sheet->delimiter == ' ' || sheet->delimiter == '\0') {
+    if (sheet->delimiter == ' ') {
         if (!wa_grow(&spaced->bytes, &spaced->capacity, fed_length + 1, 1)) {
             return false;
         }
-        fed_length = wa_sheet_join_spaces(fed, fed_length, spaced->bytes);
+        bool careful = sheet->word_lines < WORD_LINES_MAX;
+        fed_length = wa_sheet_join_spaces(fed, fed_length, careful, spaced->bytes);
         fed = spaced->bytes;
     }
     feed(parser, &filling, fed, fed_length, stray_quote || comment ? '\0' : '"');
     classify(sheet, row, comment);
+    sheet->word_lines += row->number_count < 2;
     return !filling.failed;
 }
 

@@ -107,7 +107,7 @@ static bool header_at(const struct wa_sheet *sheet, size_t r, size_t *end)
 {
     bool volume;
     bool reading;
-    if (!may_be_header(sheet, r)) {
+    if (!may_be_header(sheet, r) || !numbers_follow(sheet, r + 1)) {
         return false;
     }
     roles_of(sheet, r, r + 1, &volume, &reading);
@@ -266,6 +266,7 @@ static void fill_columns(const struct wa_sheet *sheet, struct wa_table_part *tab
         if (row->kind != WA_ROW_NUMBERS) {
             continue;
         }
+        table->row_count++;
         for (size_t c = 0; c < row->cell_count && c < table->column_count; c++) {
             struct wa_cell_value value = wa_sheet_value(sheet, row, c);
             if (value.kind == WA_CELL_NUMBER) {
@@ -373,6 +374,7 @@ static void join_tables(struct wa_sheet *sheet, struct table_list *list)
         }
         above->end_row = table->end_row;
         memset(above->columns, 0, sizeof above->columns);
+        above->row_count = 0;
         fill_columns(sheet, above);
     }
     list->count = list->count > 0 ? to + 1 : 0;
