@@ -125,6 +125,10 @@ static bool is_spaced_group(const char *rest)
 
 static struct wa_cell_value from_number(const struct wa_number *number)
 {
+    /* No volume, reading or time is that large; it also keeps sums finite. */
+    if (!(number->value < 1e12 && number->value > -1e12)) {
+        return (struct wa_cell_value){.kind = WA_CELL_WORDS};
+    }
     return (struct wa_cell_value){
         .kind = number->grouped ? WA_CELL_GROUPED : WA_CELL_NUMBER,
         .value = number->value,
