@@ -160,3 +160,14 @@ int keyed_find(const struct loader *loader, enum table_kind kind, const char *ke
     int entry = name_index_find(&loader->keys[kind], key);
     return entry < 0 ? -1 : entry / 2;
 }
+
+void check_key_spelling(struct loader *loader, const struct table_file *file,
+                        const struct table_row *row, int column, const char *written, size_t length,
+                        const char *key)
+{
+    if (strlen(key) != length || strncmp(written, key, length) != 0) {
+        loader_problem(loader, file, row->line, column, false,
+                       "'%.*s' is taken for the key '%.60s'; write it as that.",
+                       (int)(length > 60 ? 60 : length), written, key);
+    }
+}

@@ -9,6 +9,8 @@
 
 #define PUBLISHED_MASS_TOLERANCE 0.01 /* g/mol, beside the last digit and the atomic weights */
 #define DOUBTFUL_U 1.0
+#define FAR_APART 0.8        /* pK */
+#define ORGANIC_PKA_MIN -2.5 /* carbon without sulfur */
 
 /* Elements whose compounds have an even number of electrons as a rule: the main groups. In the
  * transition metals an odd number is common. */
@@ -54,12 +56,13 @@ struct check {
 
 static bool source_known(const struct wa_table *table, const char *source)
 {
+    int index = wa_table_find_source(table, source);
     return source[0] == '\0' || strcmp(source, "from memory") == 0 ||
-           wa_table_find_source(table, source) >= 0;
+           (index >= 0 && strcmp(table->sources[index].key, source) == 0);
 }
 
-/* Does the formula, with its charge, have an odd number of electrons although it should not? */
-static bool odd_electrons(const struct wa_table_storage *storage, const char *formula, int charge)
+bool formula_has_odd_electrons(const struct wa_table_storage *storage, const char *formula,
+                               int charge)
 {
     struct composition composition;
     char reason[128];
@@ -91,7 +94,7 @@ static double hydrogens(const struct wa_table_storage *storage, const char *form
 static void check_acid(struct check *check, const struct wa_acid *acid, bool in_a_form)
 {
     const struct wa_table_storage *storage = check->table->storage;
-    if (odd_electrons(storage, acid->formula, acid->charge)) {
+    if (formula_has_odd_electrons(storage, acid->formula, acid->charge)) {
         FOUND(check, acid, "formula",
               "%s with charge %+d has an odd number of electrons; check the number of hydrogens "
               "and the charge of the fully protonated species.",
@@ -112,6 +115,32 @@ static void check_acid(struct check *check, const struct wa_acid *acid, bool in_
     }
 }
 
+/* A value far from the others of its step is a slip of somebody's; and an organic acid as strong as
+ * the mineral acids is hardly one. */
+static void check_disagreement(struct check *check, const struct wa_acid *acid,
+                               const struct wa_constant_row *row)
+{
+    const struct wa_step *step = &acid->steps[row->step - 1];
+    double off = fabs(row->pKa_standard - step->pKa);
+    if (step->row_count > 1 && row->used && off > FAR_APART && off > 3.0 * row->u_standard) {
+        FOUND(
+            check, row, "pKa",
+            "%g for step %d of '%s' lies %.1f from the mean of its rows; one of them is wrong, or "
+            "its u is too small.",
+            row->pKa, row->step, acid->key, off);
+    }
+    struct composition composition;
+    char reason[128];
+    const struct wa_table_storage *storage = check->table->storage;
+    if (row->pKa < ORGANIC_PKA_MIN &&
+        formula_parse(storage, acid->formula, &composition, reason, sizeof reason) &&
+        composition_atoms(&composition, storage->carbon) > 0.0 &&
+        composition_atoms(&composition, element_find(storage, "S")) <= 0.0) {
+        FOUND(check, row, "pKa", "%g is far too low for an organic acid; check the sign.",
+              row->pKa);
+    }
+}
+
 static void check_constants(struct check *check, const struct wa_acid *acid)
 {
     const struct wa_constant_row *rows = check->table->constants + acid->constant_first;
@@ -128,6 +157,7 @@ static void check_constants(struct check *check, const struct wa_acid *acid)
                   "0.02, is expected.",
                   rows[i].u);
         }
+        check_disagreement(check, acid, &rows[i]);
         for (size_t j = 0; j < i; j++) {
             if (rows[j].step == rows[i].step && strcmp(rows[j].source, rows[i].source) == 0 &&
                 fabs(rows[j].temperature_C - rows[i].temperature_C) < 1e-9 &&
@@ -186,7 +216,7 @@ static void check_form(struct check *check, const struct wa_form *form)
               "is wrong.",
               form->published_molar_mass, form->formula, form->molar_mass);
     }
-    if (odd_electrons(check->table->storage, form->formula, 0)) {
+    if (formula_has_odd_electrons(check->table->storage, form->formula, 0)) {
         FOUND(check, form, "formula",
               "%s has an odd number of electrons; check its number of hydrogens.", form->formula);
     }

@@ -163,6 +163,8 @@ static bool read_constant(struct loader *loader, const struct table_file *file,
                        key);
         return false;
     }
+    check_key_spelling(loader, file, row, CONSTANT_ACID, key, strlen(key),
+                       loader->table.acids[constant->acid].key);
     return true;
 }
 

@@ -154,6 +154,21 @@ static bool add_parts(const struct loader *loader, const struct wa_form *form,
     return true;
 }
 
+static int organic_parts(const struct loader *loader, const struct wa_form *form)
+{
+    int count = 0;
+    for (int i = 0; i < form->part_count; i++) {
+        struct composition composition;
+        char reason[128];
+        int acid = form->parts[i].acid;
+        count += acid != WA_PART_WATER &&
+                 formula_parse(loader->table.storage, loader->table.acids[acid].formula,
+                               &composition, reason, sizeof reason) &&
+                 composition_atoms(&composition, loader->table.storage->carbon) > 0.0;
+    }
+    return count;
+}
+
 /* Formula, molar mass and spectators of a form whose parts are known. */
 static bool settle_formula(struct loader *loader, const struct table_file *file,
                            const struct table_row *row, struct wa_form *form)
@@ -190,6 +205,12 @@ static bool settle_formula(struct loader *loader, const struct table_file *file,
                        spectators.charge);
         return false;
     }
+    if (spectators.waters < -0.5 && organic_parts(loader, form) > 1) {
+        loader_problem(loader, file, row->line, FORM_PARTS, false,
+                       "The formula '%.60s' has %g waters less than the parts '%.80s' together; a "
+                       "salt of organic parts has none to lose. Is a part mistaken for another?",
+                       form->formula, -spectators.waters, table_cell(file, row, FORM_PARTS));
+    }
     if (!spectators.split) {
         loader_problem(loader, file, row->line, FORM_PARTS, false,
                        "What '%.60s' holds beside its parts (%s, charge %+d) is no ion that is "
@@ -198,6 +219,20 @@ static bool settle_formula(struct loader *loader, const struct table_file *file,
                        form->formula, spectators.remainder, spectators.charge);
     }
     return true;
+}
+
+/* Each part as written against the key it was taken for. */
+void check_part_spelling(struct loader *loader, const struct table_file *file,
+                         const struct table_row *row, int column, const char *text,
+                         const struct wa_form_part *parts)
+{
+    for (int i = 0; *(text = skip_spaces(text)) != '\0'; i++) {
+        const char *key =
+            parts[i].acid == WA_PART_WATER ? "water" : loader->table.acids[parts[i].acid].key;
+        check_key_spelling(loader, file, row, column, text, word_length(text), key);
+        text += strcspn(text, ";");
+        text += *text == ';';
+    }
 }
 
 /* Melting point: a number, perhaps with a d for decomposition or a range. */
@@ -260,6 +295,7 @@ static bool read_form(struct loader *loader, const struct table_file *file,
     if (!settle_formula(loader, file, row, form)) {
         return false;
     }
+    check_part_spelling(loader, file, row, FORM_PARTS, parts, form->parts);
     for (int i = 0; i < form->part_count; i++) {
         form->modelled = form->modelled && (form->parts[i].acid == WA_PART_WATER ||
                                             loader->table.acids[form->parts[i].acid].modelled);

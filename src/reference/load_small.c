@@ -31,6 +31,37 @@ void take_sources(struct loader *loader, const struct table_file *file)
     }
 }
 
+/* Atomic weights rise with the number; the exceptions (argon, cobalt, tellurium, thorium) are off
+ * by one unit at most. And no nucleus but hydrogen's has less than 1.9 or more than 2.7 times its
+ * number. */
+static void check_order_of_weights(struct loader *loader, const struct table_file *file)
+{
+    const struct wa_table_storage *storage = loader->table.storage;
+    const struct element *by_number[ELEMENTS_MAX] = {NULL};
+    for (int i = 0; i < storage->element_count; i++) {
+        const struct element *element = &storage->elements[i];
+        double ratio = element->number > 1 ? element->weight / element->number : 2.0;
+        if (ratio >= 1.9 && ratio <= 2.7) {
+            by_number[element->number] = element;
+        } else if (element->file == file->name && element->number > 0) {
+            loader_problem(loader, file, element->line, WEIGHT_WEIGHT, false,
+                           "The weight %g cannot be that of %s, number %d.", element->weight,
+                           element->symbol, element->number);
+        }
+    }
+    const struct element *before = NULL;
+    for (int number = 1; number < ELEMENTS_MAX; number++) {
+        const struct element *element = by_number[number];
+        if (element != NULL && before != NULL && before->weight > element->weight + 1.1) {
+            const struct element *blamed = element->file == file->name ? element : before;
+            loader_problem(loader, file, blamed->line, WEIGHT_WEIGHT, false,
+                           "%s (%g) is lighter than %s before it (%g); one of the two is wrong.",
+                           element->symbol, element->weight, before->symbol, before->weight);
+        }
+        before = element != NULL ? element : before;
+    }
+}
+
 /* Atomic weights in two figures: the abridged weight and the ± that IUPAC gives with it. The ± is
  * a limit within which nearly all materials lie, so it is taken as the half-width of a rectangular
  * distribution (as in Eurachem/CITAC QUAM, example A2): u = ±/√3. */
@@ -45,7 +76,7 @@ void take_atomic_weights(struct loader *loader, const struct table_file *file)
         double number;
         if (symbol == NULL ||
             !numeric_cell(loader, file, row, WEIGHT_WEIGHT, 1.0, 400.0, true, NAN, &weight) ||
-            !numeric_cell(loader, file, row, WEIGHT_U, 0.0, 5.0, true, NAN, &half_width) ||
+            !numeric_cell(loader, file, row, WEIGHT_U, 1e-9, 5.0, true, NAN, &half_width) ||
             !numeric_cell(loader, file, row, WEIGHT_NUMBER, 1, 118, false, 0.0, &number)) {
             continue;
         }
@@ -74,11 +105,20 @@ void take_atomic_weights(struct loader *loader, const struct table_file *file)
             storage->element_count++;
             storage->element_of[symbol[0] - 'A'][length == 2 ? symbol[1] - 'a' : 26] = element + 1;
         }
+        if (half_width > 0.01 * weight) {
+            loader_problem(loader, file, row->line, WEIGHT_U, false,
+                           "± %g for %s is more than one per cent of its weight; no standard "
+                           "atomic weight is as uncertain as that.",
+                           half_width, symbol);
+        }
         struct element entry = {
             .weight = weight, .u = half_width / sqrt(3.0), .number = (int)lround(number)};
         memcpy(entry.symbol, symbol, length);
+        entry.file = file->name;
+        entry.line = row->line;
         storage->elements[element] = entry;
     }
+    check_order_of_weights(loader, file);
 }
 
 void take_indicators(struct loader *loader, const struct table_file *file)
@@ -104,6 +144,13 @@ void take_indicators(struct loader *loader, const struct table_file *file)
                            "The range runs from %g to %g; the higher pH belongs into 'high pH'.",
                            indicator.low_pH, indicator.high_pH);
             continue;
+        }
+        if (indicator.pKa < indicator.low_pH - 1.0 || indicator.pKa > indicator.high_pH + 1.0 ||
+            indicator.high_pH - indicator.low_pH > 4.0) {
+            loader_problem(loader, file, row->line, INDICATOR_LOW, false,
+                           "A range from %g to %g does not go with a pKa of %g; an indicator turns "
+                           "within about one unit of its pKa.",
+                           indicator.low_pH, indicator.high_pH, indicator.pKa);
         }
         long place = keyed_place(loader, file, row, indicator.key, loader->table.indicator_count);
         if (place < 0) {
@@ -164,7 +211,7 @@ static bool read_standard(struct loader *loader, const struct table_file *file,
     const char *use = required_cell(loader, file, row, STANDARD_USE);
     if (standard->key == NULL || standard->name == NULL || standard->formula == NULL ||
         use == NULL ||
-        !numeric_cell(loader, file, row, STANDARD_PURITY, 0.5, 1, false, NAN, &standard->purity) ||
+        !numeric_cell(loader, file, row, STANDARD_PURITY, 0.9, 1, false, NAN, &standard->purity) ||
         !numeric_cell(loader, file, row, STANDARD_U, 0, 0.5, false, NAN, &standard->purity_u) ||
         !numeric_cell(loader, file, row, STANDARD_EQUIVALENTS, 1, 8, true, NAN, &equivalents)) {
         return false;
@@ -186,6 +233,17 @@ static bool read_standard(struct loader *loader, const struct table_file *file,
     }
     standard->molar_mass =
         composition_mass(loader->table.storage, &composition, &standard->molar_mass_u);
+    if (formula_has_odd_electrons(loader->table.storage, standard->formula, 0)) {
+        loader_problem(loader, file, row->line, STANDARD_FORM, false,
+                       "%s has an odd number of electrons; check its number of hydrogens.",
+                       standard->formula);
+    }
+    int form = keyed_find(loader, TABLE_FORMS, standard->key);
+    if (form >= 0 && fabs(loader->table.forms[form].molar_mass - standard->molar_mass) > 0.01) {
+        loader_problem(loader, file, row->line, STANDARD_FORM, false,
+                       "The formula %s contradicts that of the form '%s' in forms.csv, %s.",
+                       standard->formula, standard->key, loader->table.forms[form].formula);
+    }
     standard->for_base = strcmp(use, "base") == 0;
     standard->equivalents = (int)lround(equivalents);
     return true;

@@ -36,6 +36,8 @@ struct element {
     double weight; /* g/mol */
     double u;      /* standard uncertainty */
     int number;    /* atomic number, 0 when the table does not give it */
+    const char *file;
+    long line;
 };
 
 struct hazard {
@@ -114,6 +116,10 @@ double composition_mass(const struct wa_table_storage *storage,
                         const struct composition *composition, double *u);
 /** Index of an element by symbol, -1 when the table of atomic weights lacks it. */
 int element_find(const struct wa_table_storage *storage, const char *symbol);
+/** Whether a formula of main-group elements has, with its charge, an odd number of electrons, as
+ * hardly any compound in a bottle has. */
+bool formula_has_odd_electrons(const struct wa_table_storage *storage, const char *formula,
+                               int charge);
 /** Atoms of one element. */
 double composition_atoms(const struct composition *composition, int element);
 /** Add atoms of one element. @return false when the formula has too many elements */
@@ -288,6 +294,10 @@ bool numeric_cell(struct loader *loader, const struct table_file *file, const st
  * or `count` for a new one; -1 with a fatal problem for a key that stands twice in one layer. */
 long keyed_place(struct loader *loader, const struct table_file *file, const struct table_row *row,
                  const char *key, size_t count);
+/** Note a key that was found although it is not written as it stands in its own row. */
+void check_key_spelling(struct loader *loader, const struct table_file *file,
+                        const struct table_row *row, int column, const char *written, size_t length,
+                        const char *key);
 /** Row index of a key of the given kind, or -1. */
 int keyed_find(const struct loader *loader, enum table_kind kind, const char *key);
 
@@ -314,12 +324,18 @@ bool parts_parse(const struct loader *loader, const char *text,
                  struct wa_form_part parts[WA_PARTS_MAX], int *part_count, char *reason,
                  size_t reason_size);
 
+/** Note part keys that are not written as they stand in acids.csv. */
+void check_part_spelling(struct loader *loader, const struct table_file *file,
+                         const struct table_row *row, int column, const char *text,
+                         const struct wa_form_part *parts);
+
 /* What is left of a form when its parts are taken away. */
 struct spectators {
     int charge;
     double z2;     /* sum of z^2 of the ions */
     bool split;    /* the remainder is known ions and whole waters, and the charges add up */
     bool balanced; /* split, or the remainder may hold an ion that is not known here */
+    double waters; /* whole waters beside the ions; negative in anhydrides */
     char remainder[96];
 };
 

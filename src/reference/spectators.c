@@ -120,11 +120,12 @@ static int most_of(const struct search *search, const struct composition *remain
 
 /* Try the ions from `from` on. @return whether the remainder comes out with the charge */
 static bool try_ions(struct search *search, int from, const struct composition *remainder,
-                     int charge, double *z2)
+                     int charge, double *z2, double *waters)
 {
     const struct wa_table_storage *storage = search->storage;
     int most = 0;
     if (charge == 0 && only_water(search, remainder)) {
+        *waters = composition_atoms(remainder, storage->oxygen);
         return true;
     }
     while (from < storage->ion_count &&
@@ -133,14 +134,14 @@ static bool try_ions(struct search *search, int from, const struct composition *
     }
     search->steps++;
     if (from == storage->ion_count || search->steps > SEARCH_STEPS_MAX) {
-        return charge == 0 && only_water(search, remainder);
+        return false;
     }
     const struct spectator_ion *ion = &storage->ions[from];
     for (int count = most; count >= 0; count--) {
         struct composition rest = *remainder;
         double deeper = *z2 + count;
         if (composition_add(&rest, -count, &ion->composition) &&
-            try_ions(search, from + 1, &rest, charge - count * ion->charge, &deeper)) {
+            try_ions(search, from + 1, &rest, charge - count * ion->charge, &deeper, waters)) {
             *z2 = deeper;
             return true;
         }
@@ -195,7 +196,8 @@ void spectators_find(const struct wa_table_storage *storage, const struct compos
     int charge = spectators->charge;
     double z2 = 0.0;
     take_single_ions(&search, &remainder, &charge, &z2);
-    spectators->split = complete && try_ions(&search, 0, &remainder, charge, &z2);
+    spectators->split =
+        complete && try_ions(&search, 0, &remainder, charge, &z2, &spectators->waters);
     spectators->balanced = spectators->split || unknown;
     if (!spectators->split) {
         write_remainder(storage, &whole, spectators->remainder, sizeof spectators->remainder);

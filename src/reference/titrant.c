@@ -55,6 +55,7 @@ static bool settle_titrant(struct loader *loader, const struct table_file *file,
                        "A titrant is one system, not %d.", part_count);
         return false;
     }
+    check_part_spelling(loader, file, row, TITRANT_SYSTEM, system, parts);
     titrant->protons = count_protons(loader, titrant, &parts[0]);
     if (titrant->protons < 1) {
         loader_problem(loader, file, row->line, TITRANT_SYSTEM, true,
