@@ -41,7 +41,9 @@ enum wa_status note_options_init(struct note_options *options, struct wa_error *
     options->given = calloc(count, sizeof *options->given);
     options->options = calloc(count + 3, sizeof *options->options);
     options->long_names = calloc(count, sizeof *options->long_names);
-    if (options->given == NULL || options->options == NULL || options->long_names == NULL) {
+    options->helps = calloc(count, sizeof *options->helps);
+    if (options->helps == NULL || options->given == NULL || options->options == NULL ||
+        options->long_names == NULL) {
         note_options_free(options);
         return wa_fail_memory(error);
     }
@@ -52,10 +54,12 @@ enum wa_status note_options_init(struct note_options *options, struct wa_error *
         for (char *at = options->long_names[i]; *at != '\0'; at++) {
             *at = *at == ' ' ? '-' : *at;
         }
+        snprintf(options->helps[i], sizeof options->helps[i], "%s, such as \"%s\"", names[i].help,
+                 names[i].example);
         options->options[i + 1] = (struct argp_option){.name = options->long_names[i],
                                                        .key = key_first_note + (int)i,
-                                                       .arg = names[i].example,
-                                                       .doc = names[i].help,
+                                                       .arg = "VALUE",
+                                                       .doc = options->helps[i],
                                                        .group = 1};
     }
     options->options[count + 1] =
@@ -72,5 +76,6 @@ void note_options_free(struct note_options *options)
     free(options->given);
     free(options->options);
     free(options->long_names);
+    free(options->helps);
     *options = (struct note_options){0};
 }

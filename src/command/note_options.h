@@ -12,6 +12,7 @@ struct note_options {
     struct wa_given_note *given;
     struct argp_option *options;
     char (*long_names)[40];
+    char (*helps)[128];
     size_t name_count;
     struct argp argp;
 };

@@ -61,31 +61,40 @@ static double noise_of(const double *reading, size_t count)
     return sizes[used * 3 / 4];
 }
 
-/* Spread of the readings around i, itself left out. */
-static double spread_around(const double *reading, size_t count, size_t i)
+/* Lowest and highest of the two readings on each side of i, itself left out. */
+static void range_around(const double *reading, size_t count, size_t i, double *low, double *high)
 {
-    double low = INFINITY;
-    double high = -INFINITY;
+    *low = INFINITY;
+    *high = -INFINITY;
     size_t first = i >= 2 ? i - 2 : 0;
     for (size_t k = first; k <= i + 2 && k < count; k++) {
         if (k != i) {
-            low = fmin(low, reading[k]);
-            high = fmax(high, reading[k]);
+            *low = fmin(*low, reading[k]);
+            *high = fmax(*high, reading[k]);
         }
     }
-    return high - low;
 }
 
 static bool is_slip(const double *reading, size_t count, size_t i, double noise, double unit)
 {
     double out = outside(reading[i - 1], reading[i], reading[i + 1]);
-    if (out <= unit || out <= 6 * noise) {
+    if (out <= unit || out <= 8 * noise) {
         return false;
     }
     /* The neighbour may be the slip: it then lies outside its own neighbours still farther. */
     double before = i >= 2 ? outside(reading[i - 2], reading[i - 1], reading[i]) : 0;
     double after = i + 2 < count ? outside(reading[i], reading[i + 1], reading[i + 2]) : 0;
-    return out > before && out > after && out > 0.5 * spread_around(reading, count, i);
+    if (out <= before || out <= after) {
+        return false;
+    }
+    /* After a large addition a badly stirred vessel can overshoot, with the jump and on its scale;
+     * it never falls behind where the curve came from. */
+    double low;
+    double high;
+    range_around(reading, count, i, &low, &high);
+    bool rising = reading[i + 1] > reading[i - 1];
+    bool behind = rising ? reading[i] < low - unit : reading[i] > high + unit;
+    return behind || out > 0.5 * (high - low);
 }
 
 /* A first or last reading has one neighbour only: it must be off by a decade and run against the
@@ -145,7 +154,7 @@ enum wa_status wa_screen_readings(struct wa_raw *raw, size_t count, enum wa_read
         }
     }
     if (used >= 6) {
-        check_slips(raw, index, reading, used, kind == WA_READING_PH ? 1.0 : 59.0);
+        check_slips(raw, index, reading, used, kind == WA_READING_PH ? 1.25 : 74.0);
     }
     free(reading);
     free(index);

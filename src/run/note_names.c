@@ -23,9 +23,9 @@ static const struct wa_note_name names[] = {
     {"buffer 2", "9.180 = -127.0 mV", "a second buffer reading"},
     {"reading uncertainty", "0.01", "standard deviation of one reading"},
     {"volume uncertainty", "0.01 mL", "standard deviation of one volume"},
-    {"volume reading", "burette", "total, burette or increment"},
-    {"date", "2024-03-02", "kept and printed"},
-    {"analyst", "M. Weber", "kept and printed"},
+    {"volume reading", "burette", "how volumes were written: total, burette or increment"},
+    {"date", "2024-03-02", "when it was measured; kept and printed"},
+    {"analyst", "M. Weber", "who measured; kept and printed"},
 };
 
 struct other_name {
@@ -38,6 +38,7 @@ static const struct other_name others[] = {
     {"mass of sample", "sample mass"},
     {"mass", "sample mass"},
     {"sample weight", "sample mass"},
+    {"sample size", "sample mass"},
     {"weight of sample", "sample mass"},
     {"weighed sample", "sample mass"},
     {"einwaage", "sample mass"},
@@ -63,6 +64,7 @@ static const struct other_name others[] = {
     {"probenvolumen", "sample volume"},
     {"volume of solution", "solution volume"},
     {"initial volume", "solution volume"},
+    {"v0", "solution volume"},
     {"starting volume", "solution volume"},
     {"start volume", "solution volume"},
     {"total solution volume", "solution volume"},
