@@ -40,7 +40,8 @@ struct wa_experiment {
     struct wa_prior davies;            /**< linear coefficient of the Davies equation */
     struct wa_prior ln_noise_reading;  /**< ln of the standard deviation of a pH reading */
     struct wa_prior ln_noise_volume;   /**< ln of the standard deviation of a volume in mL */
-    double background;                 /**< mol/L of 1:1 electrolyte in the sample */
+    double background;     /**< mol/L of 1:1 electrolyte in the sample */
+    double excess_u;       /**< prior u of strong acid (or, negative, base) in the sample, mol; 0: none */
     double equivalents;    /**< protons that a mole of titrant takes or gives, positive */
     double titrant_charge; /**< spectator charge a mole of titrant brings: +1 NaOH, -1 HCl */
     bool titrant_is_weak;  /**< it brings an acid system of its own (sulfuric acid too) */
@@ -71,7 +72,6 @@ struct wa_sample_model {
     double spectator_charge[WA_SUBSTANCES_MAX];   /**< per formula unit */
     double spectator_z2[WA_SUBSTANCES_MAX];       /**< sum of z^2 over them, per formula unit */
     struct wa_prior ln_amount[WA_SUBSTANCES_MAX]; /**< ln of mol */
-    double excess_u;  /**< prior standard deviation of strong acid in excess, mol; 0: none */
     bool alike_sites; /**< generic acid: successive pK are at least lg 4 apart, softly */
 };
 

@@ -34,7 +34,8 @@ void wa_generic_sample(const struct wa_experiment *experiment, int step_count, i
 
 /* Protons lost per molecule at a point, from the charge balance at the measured pH. */
 static double protons_lost(const struct wa_experiment *experiment,
-                           const struct wa_sample_model *sample, double amount, size_t point)
+                           const struct wa_sample_model *sample, double amount, double excess,
+                           size_t point)
 {
     const struct wa_medium medium = wa_medium_at(experiment->temperature_C);
     const double log10_gamma =
@@ -47,7 +48,7 @@ static double protons_lost(const struct wa_experiment *experiment,
     const double titrant = (experiment->titrant_is_base ? 1.0 : -1.0) * experiment->equivalents *
                            exp(experiment->ln_titrant.mean);
     return sample->parts[0].charge + sample->spectator_charge[0] +
-           (titrant * added_L + (hydrogen - hydroxide) * total_L) / amount;
+           (titrant * added_L - excess + (hydrogen - hydroxide) * total_L) / amount;
 }
 
 /* pH at which the protons lost pass `level`: between two points, or beyond the ends by the
@@ -70,31 +71,34 @@ static double crossing(const struct wa_experiment *experiment, const double *los
     return pH[end] + log10((1.0 - in_step) / in_step);
 }
 
-bool wa_generic_start(const struct wa_experiment *experiment, const struct wa_sample_model *sample,
-                      double amount, double *start)
+enum wa_status wa_generic_start(const struct wa_experiment *experiment,
+                                const struct wa_sample_model *sample, double amount, double excess,
+                                double *value, struct wa_error *error)
 {
     struct wa_parameter parameters[WA_PARAMETERS_MAX];
     const int count = wa_fit_parameters(experiment, sample, parameters);
     double *lost = malloc(experiment->count * sizeof *lost);
     if (lost == NULL) {
-        return false;
+        return wa_fail_memory(error);
     }
     for (size_t p = 0; p < experiment->count; p++) {
-        lost[p] = protons_lost(experiment, sample, amount, p);
+        lost[p] = protons_lost(experiment, sample, amount, excess, p);
     }
     for (int i = 0; i < count; i++) {
-        start[i] = parameters[i].prior.mean;
+        value[i] = parameters[i].prior.mean;
         if (parameters[i].kind == WA_PARAMETER_LN_AMOUNT) {
-            start[i] = log(amount);
+            value[i] = log(amount);
+        } else if (parameters[i].kind == WA_PARAMETER_EXCESS) {
+            value[i] = excess;
         } else if (parameters[i].kind == WA_PARAMETER_PK) {
             const double pK = crossing(experiment, lost, parameters[i].step + 0.5);
-            start[i] = fmin(fmax(pK, start_pK_low), start_pK_high);
+            value[i] = fmin(fmax(pK, start_pK_low), start_pK_high);
             if (i > 0 && parameters[i - 1].kind == WA_PARAMETER_PK) {
                 /* Crossings can fall together; the model needs an order to begin with. */
-                start[i] = fmax(start[i], start[i - 1] + 0.3);
+                value[i] = fmax(value[i], value[i - 1] + 0.3);
             }
         }
     }
     free(lost);
-    return true;
+    return WA_OK;
 }

@@ -19,8 +19,7 @@ static void add(struct wa_parameter *parameters, int *count, enum wa_parameter_k
     (*count)++;
 }
 
-static void add_nuisances(const struct wa_experiment *experiment,
-                          const struct wa_sample_model *sample, struct wa_parameter *parameters,
+static void add_nuisances(const struct wa_experiment *experiment, struct wa_parameter *parameters,
                           int *count)
 {
     add(parameters, count, WA_PARAMETER_LN_TITRANT, 0, 0, experiment->ln_titrant);
@@ -39,8 +38,8 @@ static void add_nuisances(const struct wa_experiment *experiment,
     if (experiment->temperature.u > negligible_temperature) {
         add(parameters, count, WA_PARAMETER_TEMPERATURE, 0, 0, experiment->temperature);
     }
-    if (sample->excess_u > 0.0) {
-        const struct wa_prior none = {.mean = 0.0, .u = sample->excess_u};
+    if (experiment->excess_u > 0.0) {
+        const struct wa_prior none = {.mean = 0.0, .u = experiment->excess_u};
         add(parameters, count, WA_PARAMETER_EXCESS, 0, 0, none);
     }
 }
@@ -61,7 +60,7 @@ int wa_fit_parameters(const struct wa_experiment *experiment, const struct wa_sa
     for (int a = 0; a < sample->substance_count; a++) {
         add(parameters, &count, WA_PARAMETER_LN_AMOUNT, a, 0, sample->ln_amount[a]);
     }
-    add_nuisances(experiment, sample, parameters, &count);
+    add_nuisances(experiment, parameters, &count);
     return count;
 }
 

@@ -1,14 +1,11 @@
-#include "fit/fit_internal.h"
 #include "fit/generic_internal.h"
 
 #include <math.h>
 #include <stdlib.h>
-#include <string.h>
 
 /* Prior weight of n protons: the shares among the acids that laboratories meet, common practice. */
 static const double prior_by_steps[WA_GENERIC_STEPS_MAX] = {0.50, 0.28, 0.13, 0.05, 0.025, 0.015};
 static const double prior_already_lost = 0.25;
-static const int trial_iterations = 3;
 static const double hopeless_charge = 60.0; /* the charge alone moves it by less */
 static const double hopeless = 12.0; /* ln of the evidence ratio at which more protons are vain */
 
@@ -17,9 +14,6 @@ static const double same_start = 0.1;
 
 /* Starts of one generic acid. */
 #define STARTS_MAX (WA_INFLECTIONS_MAX * WA_GENERIC_STEPS_MAX + 2)
-
-/* Of these, how many are tried by a few rounds of a fit. */
-#define STARTS_TRIED 2
 
 static void add_start(double *amount, int *count, double value)
 {
@@ -55,123 +49,26 @@ static int start_amounts(const struct wa_experiment *experiment, const struct wa
     return count;
 }
 
-/* How well a start describes the points, to within a blunt tolerance. */
-static enum wa_status score_start(const struct wa_experiment *experiment,
-                                  const struct wa_sample_model *sample, const double *start,
-                                  struct wa_point_model *points, double *score,
-                                  struct wa_error *error)
-{
-    static const struct wa_noise blunt = {.reading = 0.15, .volume = 0.0};
-    struct wa_parameter parameters[WA_PARAMETERS_MAX];
-    const int count = wa_fit_parameters(experiment, sample, parameters);
-    memset(points, 0, experiment->count * sizeof *points);
-    *score = -INFINITY;
-    if (wa_model_evaluate(experiment, sample, parameters, start, count, points, NULL, error) !=
-        WA_OK) {
-        return error->status == WA_ERROR_MEMORY ? WA_ERROR_MEMORY : WA_OK;
-    }
-    const double last = experiment->volume_mL[experiment->count - 1];
-    struct wa_noise noise = blunt;
-    noise.volume = 0.01 * last;
-    *score = 0.0;
-    for (size_t p = 0; p < experiment->count; p++) {
-        double inlier;
-        *score += wa_noise_log_likelihood(experiment->reading[p] - points[p].expected,
-                                          wa_noise_variance(&noise, &points[p]), &inlier);
-    }
-    return WA_OK;
-}
-
-/* Values a fit starts from. */
-struct start {
-    double score;
-    double value[WA_PARAMETERS_MAX];
-};
-
-/* The best few starts by their scores, best first; returns how many. */
-static enum wa_status choose_starts(const struct wa_experiment *experiment,
-                                    const struct wa_curve *curve, const struct wa_generic *generic,
-                                    int protons, struct start chosen[STARTS_TRIED], int *count,
-                                    struct wa_error *error)
-{
-    double amount[STARTS_MAX];
-    const int starts = start_amounts(experiment, curve, protons, amount);
-    struct wa_point_model *points = calloc(experiment->count, sizeof *points);
-    enum wa_status status = points != NULL ? WA_OK : wa_fail_memory(error);
-    *count = 0;
-    for (int s = 0; status == WA_OK && s < starts; s++) {
-        struct start start;
-        if (!wa_generic_start(experiment, &generic->sample, amount[s], start.value)) {
-            status = wa_fail_memory(error);
-            break;
-        }
-        status =
-            score_start(experiment, &generic->sample, start.value, points, &start.score, error);
-        int at = *count < STARTS_TRIED ? (*count)++ : STARTS_TRIED;
-        while (at > 0 && start.score > chosen[at - 1].score) {
-            if (at < STARTS_TRIED) {
-                chosen[at] = chosen[at - 1];
-            }
-            at--;
-        }
-        if (at < STARTS_TRIED) {
-            chosen[at] = start;
-        }
-    }
-    free(points);
-    return status;
-}
-
-/* Fit from each of the best starts for a few rounds, then bring the best to convergence. */
 static enum wa_status fit_generic(const struct wa_experiment *experiment,
                                   const struct wa_curve *curve, struct wa_generic *generic,
                                   struct wa_error *error)
 {
     const int protons =
         experiment->titrant_is_base ? generic->step_count - generic->lost : generic->lost;
-    const struct wa_fit_options trial = {.most_iterations = trial_iterations};
-    struct start chosen[STARTS_TRIED];
-    double best_value[WA_PARAMETERS_MAX];
-    double best = -INFINITY;
-    int starts;
-    enum wa_status status =
-        choose_starts(experiment, curve, generic, protons, chosen, &starts, error);
+    double amount[STARTS_MAX];
+    const int starts = start_amounts(experiment, curve, protons, amount);
+    struct wa_start_list list = {.count = 0};
+    enum wa_status status = WA_OK;
     for (int s = 0; status == WA_OK && s < starts; s++) {
-        struct wa_fit fit;
-        status = wa_fit_run(experiment, &generic->sample, &trial, chosen[s].value, &fit, error);
-        if (status == WA_OK && fit.misfit > 0.0 && fit.log_evidence > best) {
-            best = fit.log_evidence;
-            for (int i = 0; i < fit.parameter_count; i++) {
-                best_value[i] = fit.parameters[i].value;
-            }
+        struct wa_start start;
+        status = wa_generic_start(experiment, &generic->sample, amount[s], 0.0, start.value, error);
+        if (status == WA_OK) {
+            status = wa_start_consider(experiment, &generic->sample, &start, &list, error);
         }
-        wa_fit_free(&fit);
     }
-    return status == WA_OK && isfinite(best)
-               ? wa_fit_run(experiment, &generic->sample, NULL, best_value, &generic->fit, error)
+    return status == WA_OK
+               ? wa_fit_from_starts(experiment, &generic->sample, &list, &generic->fit, error)
                : status;
-}
-
-/* Protons that the run shows: those that are at least half removed (added) within the readings.
- * A strong acid's proton is shown though its constant is not. */
-static int shown_protons(const struct wa_experiment *experiment, const struct wa_generic *generic)
-{
-    const bool base = experiment->titrant_is_base;
-    double lowest = INFINITY, highest = -INFINITY;
-    for (size_t p = 0; p < experiment->count; p++) {
-        lowest = fmin(lowest, experiment->reading[p]);
-        highest = fmax(highest, experiment->reading[p]);
-    }
-    int shown = 0;
-    const int first = base ? generic->lost : 0;
-    const int end = base ? generic->step_count : generic->lost;
-    for (int step = first; step < end; step++) {
-        const int index = wa_fit_find(&generic->fit, WA_PARAMETER_PK, 0, step);
-        const struct wa_parameter *pK = &generic->fit.parameters[index];
-        const bool beyond = base ? pK->value > highest : pK->value < lowest;
-        shown += beyond ? 0 : 1;
-    }
-    return shown;
 }
 
 static int by_evidence(const void *a, const void *b)
@@ -195,7 +92,8 @@ static void weigh(const struct wa_experiment *experiment, struct wa_proton_study
     for (int i = 0; i < study->count; i++) {
         struct wa_generic *generic = &study->generic[i];
         generic->probability /= sum;
-        generic->shown = shown_protons(experiment, generic);
+        generic->shown =
+            wa_generic_shown(experiment, &generic->fit, 0, generic->step_count, generic->lost);
         study->by_count[generic->shown] += generic->probability;
     }
     qsort(study->generic, (size_t)study->count, sizeof study->generic[0], by_evidence);
