@@ -19,7 +19,8 @@ enum wa_explanation_kind {
 struct wa_explanations {
     double probability[3]; /**< by kind; they add up to 1 */
     enum wa_explanation_kind preferred;
-    double excess_mol; /**< strong acid beside the acid; negative: strong base */
+    double log_two_acids; /**< ln of prior and evidence of two acids, -INFINITY: not tried */
+    double excess_mol;    /**< strong acid beside the acid; negative: strong base */
     double excess_u;
     struct wa_sample_model two_sample; /**< the best two acids, and their fit */
     struct wa_fit two_fit;             /**< parameter_count 0 when none converged */

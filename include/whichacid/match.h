@@ -47,6 +47,7 @@ struct wa_candidate {
 struct wa_match_options {
     const char *const *among; /**< closed set of keys, NULL: the whole table */
     size_t among_count;
+    double log_two_acids; /**< ln of prior and evidence of two acids; 0: not weighed */
 };
 
 /** The outcome, the most probable candidate first. */

@@ -221,6 +221,7 @@ enum wa_status wa_explanations_weigh(const struct wa_experiment *experiment,
     weight[0] += log(1.0 - WA_EXCESS_PRIOR - WA_TWO_ACIDS_PRIOR);
     weight[1] += log(WA_EXCESS_PRIOR);
     weight[2] += log(WA_TWO_ACIDS_PRIOR);
+    explanations->log_two_acids = weight[2];
     const double total = log_sum(log_sum(weight[0], weight[1]), weight[2]);
     for (int kind = 0; kind < 3; kind++) {
         explanations->probability[kind] = exp(weight[kind] - total);

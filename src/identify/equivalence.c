@@ -7,13 +7,26 @@
 /* A fit whose readings scatter more than this says nothing about volumes, in pH. */
 static const double usable_noise = 0.25;
 
-static const double contradiction = 3.0; /* combined standard uncertainties */
+/* When the curve's own equivalence volume is believed against that of a doubtful fit: the jump must
+ * be clear, and the two must differ by what matters and by what their uncertainties leave open. */
+static const double excess_scatter = 2.0;
+static const double carbonate_limit = 2.5; /* prior u */
+static const double clear_jump = 2.0;      /* pH */
+static const double least_doubt = 0.01;    /* of the volume */
+static const double contradiction = 3.0;   /* combined standard uncertainties */
 
-static double variance_of_difference(const struct wa_fit *fit, int a, int b)
+/* Variance of a linear combination of parameters. */
+static double variance_of(const struct wa_fit *fit, const int *index, const double *weight,
+                          int count)
 {
-    const double covariance = fit->covariance[a * fit->parameter_count + b];
-    return fit->parameters[a].u * fit->parameters[a].u +
-           fit->parameters[b].u * fit->parameters[b].u - 2.0 * covariance;
+    double sum = 0.0;
+    for (int i = 0; i < count; i++) {
+        for (int j = 0; j < count; j++) {
+            sum +=
+                weight[i] * weight[j] * fit->covariance[index[i] * fit->parameter_count + index[j]];
+        }
+    }
+    return sum;
 }
 
 struct wa_volume_estimate wa_equivalence_by_fit(const struct wa_experiment *experiment,
@@ -21,11 +34,15 @@ struct wa_volume_estimate wa_equivalence_by_fit(const struct wa_experiment *expe
 {
     const int amount = wa_fit_find(fit, WA_PARAMETER_LN_AMOUNT, 0, 0);
     const int titrant = wa_fit_find(fit, WA_PARAMETER_LN_TITRANT, 0, 0);
-    const double ln_ratio = fit->parameters[amount].value - fit->parameters[titrant].value;
-    struct wa_volume_estimate estimate = {.volume_mL = 1e3 * protons * exp(ln_ratio) /
-                                                       experiment->equivalents};
-    estimate.u_mL =
-        estimate.volume_mL * sqrt(fmax(variance_of_difference(fit, amount, titrant), 0.0));
+    const int excess = wa_fit_find(fit, WA_PARAMETER_EXCESS, 0, 0);
+    const double mL_per_mol = 1e3 / (exp(fit->parameters[titrant].value) * experiment->equivalents);
+    const double sign = experiment->titrant_is_base ? 1.0 : -1.0;
+    const double of_acid = protons * exp(fit->parameters[amount].value) * mL_per_mol;
+    const double of_excess = excess >= 0 ? sign * fit->parameters[excess].value * mL_per_mol : 0.0;
+    struct wa_volume_estimate estimate = {.volume_mL = of_acid + of_excess};
+    const int index[3] = {amount, titrant, excess};
+    const double weight[3] = {of_acid, -estimate.volume_mL, sign * mL_per_mol};
+    estimate.u_mL = sqrt(fmax(variance_of(fit, index, weight, excess >= 0 ? 3 : 2), 0.0));
     return estimate;
 }
 
@@ -82,18 +99,32 @@ static enum wa_status add_point(struct wa_result *result, struct wa_result_equiv
     return WA_OK;
 }
 
-/* Where fit and curve contradict each other the curve is believed, and the contradiction counts as
- * uncertainty: the model may not hold what is in the beaker. */
-static void doubt(struct wa_result_equivalence *point, const struct wa_inflection *inflection)
+/* Whether a fit gives cause for doubt: it scatters more than the curve about its own smooth line,
+ * or it needs far more carbonate than titrants hold. */
+static bool is_doubtful(const struct wa_fit *fit, const struct wa_curve *curve)
 {
-    if (inflection == NULL || !(inflection->equivalence.u_mL > 0.0)) {
+    const int carbonate = wa_fit_find(fit, WA_PARAMETER_LN_CARBONATE, 0, 0);
+    const struct wa_parameter *parameter = carbonate >= 0 ? &fit->parameters[carbonate] : NULL;
+    return fit->noise_reading > excess_scatter * curve->noise ||
+           (parameter != NULL &&
+            parameter->value > parameter->prior.mean + carbonate_limit * parameter->prior.u);
+}
+
+/* Where a doubtful fit and the curve contradict each other the inflection is taken, as the trade
+ * does, and the contradiction counts as uncertainty: the model does not hold what is in the beaker.
+ */
+static void doubt(const struct wa_fit *fit, const struct wa_curve *curve,
+                  const struct wa_inflection *inflection, struct wa_result_equivalence *point)
+{
+    if (inflection == NULL) {
         return;
     }
-    const struct wa_volume_estimate *by_curve = &inflection->equivalence;
-    const double difference = fabs(by_curve->volume_mL - point->volume_mL);
-    if (difference > contradiction * hypot(by_curve->u_mL, point->u_mL)) {
-        point->volume_mL = by_curve->volume_mL;
-        point->u_mL = fmax(by_curve->u_mL, 0.5 * difference);
+    const double difference = fabs(inflection->volume_mL - point->volume_mL);
+    if (is_doubtful(fit, curve) && inflection->jump > clear_jump &&
+        difference > least_doubt * point->volume_mL &&
+        difference > contradiction * hypot(inflection->u_mL, point->u_mL)) {
+        point->volume_mL = inflection->volume_mL;
+        point->u_mL = fmax(inflection->u_mL, 0.5 * difference);
         point->from_fit = false;
     }
 }
@@ -126,7 +157,7 @@ static enum wa_status add_fitted(const struct wa_identification *work, struct wa
         }
         const bool within_data = fitted.volume_mL <= experiment->volume_mL[experiment->count - 1];
         if (inflection != NULL || (k == best->shown && (within_data || k == 1))) {
-            doubt(&point, inflection);
+            doubt(&best->fit, curve, inflection, &point);
             const enum wa_status status = add_point(result, point, error);
             if (status != WA_OK) {
                 return status;

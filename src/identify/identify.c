@@ -11,6 +11,7 @@
 static const double default_threshold = 0.95;
 static const double default_amount_limit = 0.05;
 static const double default_pKa_limit = 0.5;
+static const double excess_taken_from = 0.8;
 static const double default_mass_u = 0.0003;   /* g; a balance that reads to 0.1 mg, twice */
 static const double default_density_u = 0.002; /* relative */
 static const double default_sample_volume_u = 0.003;
@@ -98,18 +99,41 @@ static void weigh_charges(struct wa_identification *work)
     }
 }
 
+/* Generic acids, and whether one pure acid is the explanation that the data prefer. With strong
+ * acid or base beside it, everything after this reckons with that. */
+static enum wa_status explain(struct wa_identification *work, struct wa_experiment *experiment,
+                              const struct wa_curve *curve, struct wa_error *error)
+{
+    enum wa_status status = wa_proton_study_run(experiment, curve, &work->study, error);
+    if (status != WA_OK || work->study.count == 0) {
+        return status;
+    }
+    status = wa_explanations_weigh(experiment, curve, &work->study, &work->explanations, error);
+    if (status == WA_OK &&
+        work->explanations.probability[WA_EXPLANATION_EXCESS] > excess_taken_from) {
+        wa_proton_study_free(&work->study);
+        experiment->excess_u = wa_excess_prior_u(experiment);
+        status = wa_proton_study_run(experiment, curve, &work->study, error);
+    }
+    return status;
+}
+
 static enum wa_status compute(struct wa_identification *work, struct wa_result *result,
                               struct wa_error *error)
 {
-    const struct wa_match_options options = {.among = work->options->among,
-                                             .among_count = work->options->among_count};
-    const struct wa_experiment *experiment = &result->experiments[0];
     work->mass = wa_titrated_mass_of(&result->runs.runs[0].conditions);
-    enum wa_status status =
-        wa_proton_study_run(experiment, &result->curves[0], &work->study, error);
+    enum wa_status status = explain(work, &result->experiments[0], &result->curves[0], error);
     if (status == WA_OK && work->study.count > 0) {
-        status = wa_match_run(experiment, &work->study, &work->mass, work->table, &options,
-                              &work->match, error);
+        /* What is beside the acid weighs too: the mass says nothing of the acid's molar mass then.
+         */
+        work->mass.known = work->mass.known && !(result->experiments[0].excess_u > 0.0);
+        const struct wa_match_options options = {
+            .among = work->options->among,
+            .among_count = work->options->among_count,
+            .log_two_acids = work->explanations.log_two_acids,
+        };
+        status = wa_match_run(&result->experiments[0], &work->study, &work->mass, work->table,
+                              &options, &work->match, error);
         work->matched = status == WA_OK;
         weigh_charges(work);
     }
@@ -122,7 +146,7 @@ static enum wa_status fill(struct wa_identification *work, struct wa_result *res
     enum wa_status (*const steps[])(const struct wa_identification *, struct wa_result *,
                                     struct wa_error *) = {
         wa_fill_protons, wa_fill_equivalence, wa_fill_candidates, wa_fill_findings,
-        wa_fill_verdict, wa_fill_next_tests,  wa_fill_parameters,
+        wa_fill_mixture, wa_fill_verdict,     wa_fill_next_tests, wa_fill_parameters,
     };
     enum wa_status status = WA_OK;
     for (size_t i = 0; status == WA_OK && i < sizeof steps / sizeof steps[0]; i++) {
@@ -167,6 +191,7 @@ enum wa_status wa_identify(struct wa_run_list *runs, const struct wa_table *tabl
     }
     take_best(&work, result);
     wa_match_free(&work.match);
+    wa_explanations_free(&work.explanations);
     wa_proton_study_free(&work.study);
     if (status != WA_OK) {
         wa_result_free(result);

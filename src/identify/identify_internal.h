@@ -2,6 +2,7 @@
 #ifndef WHICHACID_IDENTIFY_INTERNAL_H
 #define WHICHACID_IDENTIFY_INTERNAL_H
 
+#include "whichacid/explanations.h"
 #include "whichacid/identify.h"
 #include "whichacid/match.h"
 #include "whichacid/protons.h"
@@ -18,6 +19,7 @@ struct wa_identification {
     double pKa_limit;
     struct wa_titrated_mass mass;
     struct wa_proton_study study; /**< of the first run */
+    struct wa_explanations explanations;
     struct wa_match match;
     bool matched;
     double charge_weight[WA_START_CHARGES]; /**< share of the candidates by start charge */
@@ -52,6 +54,10 @@ enum wa_status wa_fill_candidates(const struct wa_identification *work, struct w
 /** Parameters of the best fit, for the report. */
 enum wa_status wa_fill_parameters(const struct wa_identification *work, struct wa_result *result,
                                   struct wa_error *error) WA_MUST_USE;
+
+/** More than one pure acid, when the data prefer it. */
+enum wa_status wa_fill_mixture(const struct wa_identification *work, struct wa_result *result,
+                               struct wa_error *error) WA_MUST_USE;
 
 /** The verdict, and why data are unfit when they are. */
 enum wa_status wa_fill_verdict(const struct wa_identification *work, struct wa_result *result,

@@ -81,6 +81,22 @@ static double log_not_in_table(const struct wa_proton_study *study,
     return sum;
 }
 
+/* ln of the weight of all that is no single substance of the table: one acid that nobody named, or
+ * two acids. A mixture's mass says as little as an unknown's. */
+static double log_unknown(const struct wa_proton_study *study, const struct wa_titrated_mass *mass,
+                          const struct wa_match_options *options)
+{
+    const struct wa_generic *best = &study->generic[0];
+    const int index = wa_fit_find(&best->fit, WA_PARAMETER_LN_AMOUNT, 0, 0);
+    const struct wa_parameter *amount = &best->fit.parameters[index];
+    const double one = log(WA_NOT_IN_TABLE_PRIOR) + log_not_in_table(study, mass);
+    if (options == NULL || options->log_two_acids == 0.0) {
+        return one;
+    }
+    return log_sum(one, options->log_two_acids +
+                            log_mass_evidence_generic(mass, amount->value, &amount->prior));
+}
+
 /* Start values: the reference constants and what the best generic fit found for the rest. */
 static void start_values(const struct wa_experiment *experiment, const struct wa_fit *best,
                          const struct wa_group *group, double *start)
@@ -300,8 +316,7 @@ enum wa_status wa_match_run(const struct wa_experiment *experiment,
     for (size_t i = 0; i < match->candidate_count; i++) {
         match->candidates[i].log_weight += known_share;
     }
-    normalise(closed ? -INFINITY : log(WA_NOT_IN_TABLE_PRIOR) + log_not_in_table(study, mass),
-              match);
+    normalise(closed ? -INFINITY : log_unknown(study, mass, options), match);
     qsort(match->candidates, match->candidate_count, sizeof *match->candidates, by_log_weight);
     match->forms_considered = list->form_count;
     match->models_considered = list->count;
