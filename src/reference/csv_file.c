@@ -253,7 +253,8 @@ static bool split_rows(struct splitter *splitter)
         while (!row_ends) {
             const char *cell = take_cell(splitter, &row_ends);
             blank = blank && cell[0] == '\0';
-            if (!wa_grow(&file->cells, &splitter->cell_capacity, splitter->cell_count + 1,
+            if (splitter->cell_count == splitter->cell_capacity &&
+                !wa_grow(&file->cells, &splitter->cell_capacity, splitter->cell_count + 4096,
                          sizeof *file->cells)) {
                 return false;
             }

@@ -51,14 +51,22 @@ static size_t fold_sign(const char *text, size_t length, bool plain, char single
     return 1;
 }
 
+/* What the signs of ASCII fold to; zero: a gap or a sign that needs a closer look. */
+static const char plain_fold[128] =
+    "\0\0\0\0\0\0\0\0\0\0\0\0\0\0\0\0\0\0\0\0\0\0\0\0\0\0\0\0\0\0\0\0"
+    "\0!\"#$%&'()*+,\0./0123456789:;<=>?"
+    "@abcdefghijklmnopqrstuvwxyz[\\]^\0"
+    "`abcdefghijklmnopqrstuvwxyz{|}~\0";
+
 static void fold(const char *name, size_t length, bool plain, char folded[NAME_FOLD_MAX])
 {
     size_t used = 0;
     size_t at = 0;
     while (at < length && used + 3 < NAME_FOLD_MAX) {
+        /* Most signs are plain ones, which need no look at the list of letters. */
         unsigned char first = (unsigned char)name[at];
-        if (!plain && first > ' ' && first < 0x80 && first != '-' && first != '_') {
-            folded[used] = (char)(first >= 'A' && first <= 'Z' ? first + ('a' - 'A') : first);
+        if (!plain && first < 0x80 && plain_fold[first] != 0) {
+            folded[used] = plain_fold[first];
             used++;
             at++;
             continue;
