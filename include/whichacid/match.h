@@ -43,6 +43,16 @@ struct wa_candidate {
     const struct wa_sample_model *sample; /**< owned by the match */
 };
 
+/**
+ * The sample model of a form: its acid systems with the table's constants, at the experiment's
+ * temperature, as priors.
+ * @param[in] ionic_strength  mol/L, roughly: beyond 0.05 the Davies equation is trusted less
+ * @param[in] ln_amount       prior of ln of mol of formula units
+ */
+void wa_match_sample(const struct wa_table *table, const struct wa_form *form,
+                     const struct wa_experiment *experiment, double ionic_strength,
+                     const struct wa_prior *ln_amount, struct wa_sample_model *sample);
+
 /** What may be asked of a match. Zero-initialised means the defaults. */
 struct wa_match_options {
     const char *const *among; /**< closed set of keys, NULL: the whole table */

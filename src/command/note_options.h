@@ -1,4 +1,5 @@
-/* The notes of a run as options with hyphens, shared by every command that reads runs. */
+/* The notes of a run as options with hyphens, shared by every command that reads runs. --titrant
+ * also takes the file that standardize wrote, and --electrode the one of calibrate. */
 #ifndef WHICHACID_COMMAND_NOTE_OPTIONS_H
 #define WHICHACID_COMMAND_NOTE_OPTIONS_H
 
@@ -14,6 +15,8 @@ struct note_options {
     char (*long_names)[40];
     char (*helps)[128];
     size_t name_count;
+    char *owned[4]; /**< texts made from files of standardize and calibrate */
+    size_t owned_count;
     struct argp argp;
 };
 
@@ -23,7 +26,7 @@ struct note_options {
  */
 enum wa_status note_options_init(struct note_options *options, struct wa_error *error) WA_MUST_USE;
 
-/** Free what note_options_init allocated. The texts belong to the argument vector. */
+/** Free what note_options_init and parsing allocated; other texts belong to the argument vector. */
 void note_options_free(struct note_options *options);
 
 #endif

@@ -38,9 +38,9 @@ static void set_part(const struct wa_table *table, const struct wa_form_part *fr
     }
 }
 
-static void set_sample(const struct wa_table *table, const struct wa_form *form,
-                       const struct wa_experiment *experiment, double ionic_strength,
-                       const struct wa_prior *ln_amount, struct wa_sample_model *sample)
+void wa_match_sample(const struct wa_table *table, const struct wa_form *form,
+                     const struct wa_experiment *experiment, double ionic_strength,
+                     const struct wa_prior *ln_amount, struct wa_sample_model *sample)
 {
     *sample = (struct wa_sample_model){.substance_count = 1};
     sample->ln_amount[0] = *ln_amount;
@@ -171,7 +171,7 @@ static enum wa_status group_forms(const struct wa_table *table,
             }
             struct wa_group *group = &list->groups[list->count++];
             *group = (struct wa_group){.acid = first_acid(forms[i])};
-            set_sample(table, forms[i], experiment, ionic_strength, ln_amount, &group->sample);
+            wa_match_sample(table, forms[i], experiment, ionic_strength, ln_amount, &group->sample);
         }
         const enum wa_status status =
             add_form(table, forms[i], &list->groups[list->count - 1], error);

@@ -1,0 +1,42 @@
+/* The faces of the bench room's results: text for a page of 80 columns, and JSON. The JSON of a
+ * standardization or a calibration is also the file that later commands take. */
+#ifndef WHICHACID_BENCH_REPORT_H
+#define WHICHACID_BENCH_REPORT_H
+
+#include "whichacid/bench_standardize.h"
+
+/** Value of "kind" in a file that holds a titrant, and in one that holds an electrode. */
+#define WA_TITRANT_FILE_KIND "titrant"
+#define WA_ELECTRODE_FILE_KIND "electrode"
+
+/**
+ * A standardization for people.
+ * @param[out] text  malloc'd, terminated
+ */
+enum wa_status wa_standardization_text(const struct wa_standardization *work, char **text,
+                                       struct wa_error *error) WA_MUST_USE;
+
+/** A standardization as JSON; ownership as above. */
+enum wa_status wa_standardization_json(const struct wa_standardization *work, char **text,
+                                       struct wa_error *error) WA_MUST_USE;
+
+/** What a file of this room says of a titrant or an electrode, as notes for a run. */
+struct wa_bench_file {
+    char kind[16];
+    char titrant[128];
+    struct wa_quantity concentration; /**< mol/L */
+    struct wa_quantity slope;         /**< of theory */
+    struct wa_quantity offset;        /**< pH at pH 7 */
+};
+
+/**
+ * Read a file that wa_standardization_json or wa_calibration_json wrote.
+ * @param[out] ours  whether there is such a file and it is one of these. A name that is no file, or
+ *                   a file of another kind, gives WA_OK and false: the caller then knows it is
+ *                   something else. A name that ends in .json must be one of these.
+ * @return WA_ERROR_INPUT for a file of ours that is damaged, or a .json file of another kind
+ */
+enum wa_status wa_bench_read(const char *path, const char *kind, struct wa_bench_file *file,
+                             bool *ours, struct wa_error *error) WA_MUST_USE;
+
+#endif
