@@ -121,6 +121,8 @@ struct wa_fit {
 /** How a fit may be limited. Zero-initialised means the defaults. */
 struct wa_fit_options {
     int most_iterations; /**< 0: 60 */
+    bool from_afar; /**< the start may be far off: begin with blunt weights and sharpen them, so
+                       that the points of a jump are not taken for outliers where they stand */
 };
 
 /**

@@ -14,6 +14,8 @@
 #include <string.h>
 
 static const int default_iterations = 60;
+static const double first_bluntness = 64.0; /* and its share that is left after each round */
+static const double bluntness_left = 0.6;
 static const int halvings = 8;
 static const double longest_pK_step = 1.5;
 static const double longest_ln_step = 0.7;
@@ -44,6 +46,7 @@ struct work {
     gsl_vector *step;
     gsl_vector *trial;
     struct wa_noise noise;
+    double bluntness; /* factor on both noise levels while a fit from afar sharpens its weights */
     double log_determinant;
 };
 
@@ -106,7 +109,8 @@ static double weigh(struct work *work)
     double sum = 0.0;
     for (size_t p = 0; p < work->experiment->count; p++) {
         const double residual = work->experiment->reading[p] - work->points[p].expected;
-        const double variance = wa_noise_variance(&work->noise, &work->points[p]);
+        const double variance =
+            wa_noise_variance(&work->noise, &work->points[p]) * work->bluntness * work->bluntness;
         const double wide = variance + WA_OUTLIER_SPREAD * WA_OUTLIER_SPREAD;
         sum += wa_noise_log_likelihood(residual, variance, &work->inlier[p]);
         work->precision[p] = work->inlier[p] / variance + (1.0 - work->inlier[p]) / wide;
@@ -257,18 +261,41 @@ static bool take_step(struct work *work, double *move)
     return evaluate(work, work->deviation) == GSL_SUCCESS;
 }
 
+static int by_size(const void *a, const void *b)
+{
+    const double x = *(const double *)a, y = *(const double *)b;
+    return (x > y) - (x < y);
+}
+
+/* How blunt the weights should be: as much as the median residual asks for, and less each round. A
+ * start from which most points lie many u away would otherwise take them for outliers, and stay. */
+static double bluntness(struct work *work, int round)
+{
+    static const double median_of_normal = 0.6745;
+    const size_t count = work->experiment->count;
+    for (size_t p = 0; p < count; p++) {
+        const double residual = work->experiment->reading[p] - work->points[p].expected;
+        work->square[p] = fabs(residual) / sqrt(wa_noise_variance(&work->noise, &work->points[p]));
+    }
+    qsort(work->square, count, sizeof *work->square, by_size);
+    const double wanted = work->square[count / 2] / median_of_normal;
+    return fmax(fmin(wanted, first_bluntness * pow(bluntness_left, round)), 1.0);
+}
+
 /* Alternate until parameters and noise stand still. */
-static bool iterate(struct work *work, int most_iterations)
+static bool iterate(struct work *work, int most_iterations, bool from_afar)
 {
     if (evaluate(work, work->deviation) != GSL_SUCCESS) {
         return false;
     }
     for (int round = 0; round < most_iterations; round++) {
         double move;
+        work->bluntness = from_afar ? bluntness(work, round) : 1.0;
         weigh(work);
         if (!take_step(work, &move)) {
             return false;
         }
+        work->bluntness = 1.0;
         weigh(work);
         if (!inform(work)) {
             return false;
@@ -435,7 +462,7 @@ enum wa_status wa_fit_run(const struct wa_experiment *experiment,
     }
     work.noise.reading = exp(experiment->ln_noise_reading.mean);
     work.noise.volume = exp(experiment->ln_noise_volume.mean);
-    fit->converged = iterate(&work, most);
+    fit->converged = iterate(&work, most, options != NULL && options->from_afar);
     if (work.evaluated && isfinite(work.log_determinant)) {
         store(&work, fit);
     } else {

@@ -5,7 +5,7 @@
 #include <math.h>
 #include <stdlib.h>
 
-static const int trial_iterations = 3;
+static const int trial_iterations = 8;
 static const double blunt_reading = 0.15; /* pH */
 static const double blunt_volume = 0.01;  /* of the last volume */
 
@@ -65,7 +65,7 @@ enum wa_status wa_fit_from_starts(const struct wa_experiment *experiment,
                                   const struct wa_start_list *list, struct wa_fit *fit,
                                   struct wa_error *error)
 {
-    const struct wa_fit_options trial = {.most_iterations = trial_iterations};
+    const struct wa_fit_options trial = {.most_iterations = trial_iterations, .from_afar = true};
     double best_value[WA_PARAMETERS_MAX];
     double best = -INFINITY;
     *fit = (struct wa_fit){.parameter_count = 0};

@@ -123,8 +123,9 @@ static enum wa_status fit_group(const struct wa_experiment *experiment, const st
     if (group->fit == NULL) {
         return wa_fail_memory(error);
     }
+    const struct wa_fit_options options = {.from_afar = true};
     const enum wa_status status =
-        wa_fit_run(experiment, &group->sample, NULL, start, group->fit, error);
+        wa_fit_run(experiment, &group->sample, &options, start, group->fit, error);
     group->log_curve =
         status == WA_OK && group->fit->converged ? group->fit->log_evidence : -INFINITY;
     return status;
