@@ -81,7 +81,7 @@ static void pdf_holds_the_words(void **state)
         assert_says(text, said[kind][0]);
         assert_says(text, said[kind][1]);
         assert_says(about, "Pages:           1\n");
-        assert_says(about, "Page size:       495 x");
+        assert_says(about, "Page size:       450 x");
         free(about);
         free(text);
         free(pdf);
@@ -103,7 +103,7 @@ static void png_has_its_size(void **state)
     assert_true(size > 1000);
     assert_memory_equal(png, "\x89PNG\r\n\x1A\n", 8);
     assert_int_equal(big_endian(png + 16), 2 * FIGURE_WIDTH);
-    assert_int_equal(big_endian(png + 20), 860);
+    assert_int_equal(big_endian(png + 20), 760);
     free(png);
 }
 

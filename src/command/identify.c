@@ -7,6 +7,7 @@
 #include <errno.h>
 #include <stdlib.h>
 #include <string.h>
+#include <strings.h>
 
 enum {
     key_table = 0x100,
@@ -18,7 +19,8 @@ enum {
     key_json,
     key_output,
     key_figure,
-    key_figure_kind
+    key_figure_kind,
+    key_paper
 };
 
 static const char documentation[] =
@@ -64,7 +66,17 @@ static const struct argp_option own_options[] = {
      .key = key_json,
      .doc = "the result as JSON; with --each a list of results",
      .group = 4},
-    {.name = "output", .key = key_output, .arg = "FILE", .doc = "write to FILE", .group = 4},
+    {.name = "output",
+     .key = key_output,
+     .arg = "FILE",
+     .doc = "write to FILE; its ending .html or .pdf asks for a page to print and sign, .md for a "
+            "short form",
+     .group = 4},
+    {.name = "paper",
+     .key = key_paper,
+     .arg = "A4|letter",
+     .doc = "paper of the page; A4 if none is named",
+     .group = 4},
     {.name = "figure",
      .key = key_figure,
      .arg = "FILE",
@@ -85,8 +97,9 @@ static error_t finish(const struct identify_request *request, struct argp_state 
         argp_error(state, "name at least one run to identify");
         return EINVAL;
     }
-    if (request->each && request->path_count > 1 && request->figure != NULL) {
-        argp_error(state, "a figure shows one sample: draw it for one file at a time");
+    if (request->each && request->path_count > 1 &&
+        (request->figure != NULL || identify_page_of(request) != IDENTIFY_TEXT)) {
+        argp_error(state, "a page or a figure shows one sample: make it for one file at a time");
         return EINVAL;
     }
     if (request->figure_kind != NULL && request->figure == NULL) {
@@ -139,6 +152,13 @@ static error_t parse(int key, char *argument, struct argp_state *state)
         return 0;
     case key_output:
         request->output = argument;
+        return 0;
+    case key_paper:
+        if (strcasecmp(argument, "a4") != 0 && strcasecmp(argument, "letter") != 0) {
+            argp_error(state, "there is no paper '%s' here: A4 or letter", argument);
+            return EINVAL;
+        }
+        request->paper = strcasecmp(argument, "a4") == 0 ? WA_PAPER_A4 : WA_PAPER_LETTER;
         return 0;
     case key_figure:
         request->figure = argument;

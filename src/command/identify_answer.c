@@ -216,13 +216,10 @@ static enum wa_status write_result(const struct work *work, const struct wa_resu
 {
     struct wa_report_options options = work->report;
     options.title = title;
-    char *text = NULL;
-    enum wa_status status = work->request->json ? wa_report_json(result, &options, &text, error)
-                                                : wa_report_text(result, &options, &text, error);
-    if (status == WA_OK) {
-        wa_text_append_bytes(answer, text, strlen(text));
+    enum wa_status status = identify_write(work->request, result, &options, answer, error);
+    if (status == WA_OK && work->request->figure != NULL) {
+        status = wa_figure_write(result, work->figure_kind, work->request->figure, error);
     }
-    free(text);
     return status;
 }
 
@@ -247,9 +244,6 @@ static enum wa_status answer_sample(struct work *work, size_t first, size_t coun
         status = add_inputs(work, first, count, &result, error);
         if (status == WA_OK) {
             status = write_result(work, &result, title, answer, error);
-        }
-        if (status == WA_OK && work->request->figure != NULL) {
-            status = wa_figure_write(&result, work->figure_kind, work->request->figure, error);
         }
         wa_result_free(&result);
     }

@@ -6,6 +6,7 @@
 
 #include "base/text.h"
 #include "whichacid/identify.h"
+#include "whichacid/report.h"
 
 /** The call. Texts belong to the argument vector. */
 struct identify_request {
@@ -20,11 +21,32 @@ struct identify_request {
     const char *explain;
     const char *threshold;
     const char *output;
+    enum wa_paper paper;
     const char *figure;      /**< file, or NULL */
     const char *figure_kind; /**< word, or NULL */
     bool json;
     bool each;
 };
+
+/** The form of an answer. */
+enum identify_page {
+    IDENTIFY_TEXT, /**< or JSON */
+    IDENTIFY_HTML,
+    IDENTIFY_PDF,
+    IDENTIFY_MARKDOWN,
+};
+
+/** The form that the output's ending asks for; JSON goes before any ending. */
+enum identify_page identify_page_of(const struct identify_request *request);
+
+/**
+ * Append the answer in its form.
+ * @param[in] options  of the text form
+ */
+enum wa_status identify_write(const struct identify_request *request,
+                              const struct wa_result *result,
+                              const struct wa_report_options *options, struct wa_text *answer,
+                              struct wa_error *error) WA_MUST_USE;
 
 /**
  * Answer the call. The answers of files that could be used are in `answer` even when another file

@@ -16,12 +16,12 @@ struct figure {
 };
 
 static const struct figure figures[WA_FIGURE_KINDS] = {
-    [WA_FIGURE_CURVE] = {"curve", 430, figure_draw_curve},
-    [WA_FIGURE_DERIVATIVE] = {"derivative", 300, figure_draw_derivative},
-    [WA_FIGURE_GRAN] = {"gran", 320, figure_draw_gran},
-    [WA_FIGURE_RESIDUALS] = {"residuals", 260, figure_draw_residuals},
-    [WA_FIGURE_RUNNER_UP] = {"runner-up", 520, figure_draw_runner_up},
-    [WA_FIGURE_SPECIES] = {"species", 320, figure_draw_species},
+    [WA_FIGURE_CURVE] = {"curve", 380, figure_draw_curve},
+    [WA_FIGURE_DERIVATIVE] = {"derivative", 260, figure_draw_derivative},
+    [WA_FIGURE_GRAN] = {"gran", 270, figure_draw_gran},
+    [WA_FIGURE_RESIDUALS] = {"residuals", 230, figure_draw_residuals},
+    [WA_FIGURE_RUNNER_UP] = {"runner-up", 440, figure_draw_runner_up},
+    [WA_FIGURE_SPECIES] = {"species", 270, figure_draw_species},
 };
 
 const char *wa_figure_word(enum wa_figure_kind kind)

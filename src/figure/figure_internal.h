@@ -5,8 +5,8 @@
 #include "base/text.h"
 #include "whichacid/figure.h"
 
-/** Size of a figure in CSS pixels (1/96 inch): as wide as the text of a printed page. */
-#define FIGURE_WIDTH 660
+/** Size of a figure in CSS pixels (1/96 inch): fits the text of a printed page. */
+#define FIGURE_WIDTH 600
 
 /** The points of the first run as they are drawn. Borrowed from the result. */
 struct figure_points {

@@ -14,9 +14,9 @@ static const char styles[] = "set style line 1 lc rgb '#000000' lw 1 pt 6 ps 0.7
                              "set style line 2 lc rgb '#0072B2' lw 2 dt 1 pt 7 ps 0.7\n"
                              "set style line 3 lc rgb '#D55E00' lw 2 dt (12,6) pt 8 ps 0.9\n"
                              "set style line 4 lc rgb '#555555' lw 1 dt (2,4)\n"
-                             "set style line 5 lc rgb '#007D5A' lw 1.5 pt 4 ps 1.2\n"
+                             "set style line 5 lc rgb '#007D5A' lw 1.5 pt 4 ps 1.0\n"
                              "set style line 6 lc rgb '#D55E00' lw 2 pt 2 ps 1.4\n"
-                             "set style line 7 lc rgb '#A0307A' lw 1.5 pt 13 ps 1.4\n"
+                             "set style line 7 lc rgb '#A0307A' lw 1.5 pt 13 ps 1.1\n"
                              "set style line 8 lc rgb '#C8C8C8' lw 1\n";
 
 void figure_begin(struct wa_text *script, enum wa_figure_format format, int height)
