@@ -1,8 +1,6 @@
 /* The curve with its points, the fit, equivalence and half-equivalence points. */
 #include "figure/figure_internal.h"
 
-#include "report/report_internal.h"
-
 #include <math.h>
 #include <stdio.h>
 
@@ -86,7 +84,7 @@ static void name_equivalence(struct wa_text *script, const struct wa_result *res
             continue;
         }
         char quantity[64], entry[128];
-        report_quantity(quantity, sizeof quantity, point->volume_mL, point->u_mL);
+        wa_quantity_format(quantity, sizeof quantity, point->volume_mL, point->u_mL);
         snprintf(entry, sizeof entry, "E%zu: %s mL%s", i + 1, quantity,
                  isfinite(figure_reading_at(points, point->volume_mL)) ? "" : " (beyond the run)");
         wa_text_append(script,

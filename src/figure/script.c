@@ -3,7 +3,7 @@
  * again for print in black and white. */
 #include "figure/figure_internal.h"
 
-#include "report/report_internal.h"
+#include "base/clean.h"
 
 #include <ctype.h>
 #include <math.h>
@@ -56,7 +56,7 @@ void figure_begin(struct wa_text *script, enum wa_figure_format format, int heig
 void figure_quote(struct wa_text *script, const char *text)
 {
     struct wa_text clean = {0};
-    report_clean(&clean, text != NULL ? text : "", true);
+    wa_text_clean(&clean, text != NULL ? text : "", true);
     if (clean.failed) {
         script->failed = true;
         wa_text_free(&clean);

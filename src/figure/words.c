@@ -2,7 +2,7 @@
  * needs to know of it. */
 #include "figure/figure_internal.h"
 
-#include "report/report_internal.h"
+#include "base/clean.h"
 
 #include <math.h>
 #include <stdio.h>
@@ -54,7 +54,7 @@ static void append_equivalence(struct wa_text *text, const struct wa_result *res
     for (size_t i = 0; i < result->equivalence_count; i++) {
         const struct wa_result_equivalence *point = &result->equivalence_points[i];
         char volume[64];
-        report_quantity(volume, sizeof volume, point->volume_mL, point->u_mL);
+        wa_quantity_format(volume, sizeof volume, point->volume_mL, point->u_mL);
         wa_text_append(text, " Equivalence point %zu at %s mL", i + 1, volume);
         if (isfinite(point->pH)) {
             wa_text_append(text, ", pH %.2f", point->pH);
@@ -83,7 +83,7 @@ static void append_gran(struct wa_text *text, const struct wa_result *result)
         for (int k = 0; k < 2; k++) {
             if (sides[k]->u_mL > 0.0) {
                 char volume[64];
-                report_quantity(volume, sizeof volume, sides[k]->volume_mL, sides[k]->u_mL);
+                wa_quantity_format(volume, sizeof volume, sides[k]->volume_mL, sides[k]->u_mL);
                 wa_text_append(text, "%sJump %zu, line %s: %s mL.", text->length > 0 ? " " : "",
                                i + 1, k == 0 ? "before" : "after", volume);
             }
@@ -196,13 +196,13 @@ enum wa_status wa_figure_describe(const struct wa_result *result, enum wa_figure
     struct wa_text raw = {0}, caption = {0}, alternative = {0};
     append_alternative(&raw, result, kind);
     if (!raw.failed) {
-        report_clean(&alternative, raw.bytes != NULL ? raw.bytes : "", true);
+        wa_text_clean(&alternative, raw.bytes != NULL ? raw.bytes : "", true);
     }
     bool failed = raw.failed;
     wa_text_free(&raw);
     append_caption(&raw, result, kind);
     if (!raw.failed) {
-        report_clean(&caption, raw.bytes, true);
+        wa_text_clean(&caption, raw.bytes, true);
     }
     failed = failed || raw.failed || caption.failed || alternative.failed;
     wa_text_free(&raw);
