@@ -19,7 +19,7 @@ static const double bluntness_left = 0.6;
 static const int halvings = 8;
 static const double longest_pK_step = 1.5;
 static const double longest_ln_step = 0.7;
-static const double settled = 5e-3; /* in posterior standard deviations */
+static const double default_settled = 5e-3; /* in posterior standard deviations */
 
 /* lg 4: two alike and independent sites; the softness lets hydrogen-bonded pairs pass. */
 static const double alike_spacing = 0.60205999132796239;
@@ -283,7 +283,7 @@ static double bluntness(struct work *work, int round)
 }
 
 /* Alternate until parameters and noise stand still. */
-static bool iterate(struct work *work, int most_iterations, bool from_afar)
+static bool iterate(struct work *work, int most_iterations, double settled, bool from_afar)
 {
     if (evaluate(work, work->deviation) != GSL_SUCCESS) {
         return false;
@@ -444,6 +444,8 @@ enum wa_status wa_fit_run(const struct wa_experiment *experiment,
     gsl_set_error_handler_off();
     const int most = options != NULL && options->most_iterations > 0 ? options->most_iterations
                                                                      : default_iterations;
+    const double settled =
+        options != NULL && options->settled > 0.0 ? options->settled : default_settled;
     *fit = (struct wa_fit){.parameter_count = 0};
     fit->parameter_count = wa_fit_parameters(experiment, sample, fit->parameters);
     struct work work = {.experiment = experiment,
@@ -462,7 +464,7 @@ enum wa_status wa_fit_run(const struct wa_experiment *experiment,
     }
     work.noise.reading = exp(experiment->ln_noise_reading.mean);
     work.noise.volume = exp(experiment->ln_noise_volume.mean);
-    fit->converged = iterate(&work, most, options != NULL && options->from_afar);
+    fit->converged = iterate(&work, most, settled, options != NULL && options->from_afar);
     if (work.evaluated && isfinite(work.log_determinant)) {
         store(&work, fit);
     } else {
