@@ -4,8 +4,8 @@
 #define WHICHACID_TESTS_FIT_CASES_H
 
 #include "fit/fit_internal.h"
-#include "fit/generic_internal.h"
 #include "simulate/simulate_internal.h"
+#include "whichacid/protons.h"
 
 #include <gsl/gsl_randist.h>
 #include <gsl/gsl_rng.h>
@@ -116,6 +116,22 @@ static inline int case_truth(const struct fit_case *c, const struct wa_experimen
     return count;
 }
 
+/** Where a fit starts: constants up to 0.3 off, the amount up to a tenth, the rest at the priors.
+ */
+static inline void case_start(const struct wa_parameter *parameters, const double *truth, int count,
+                              gsl_rng *random, double *start)
+{
+    for (int i = 0; i < count; i++) {
+        const double off = 2.0 * gsl_rng_uniform(random) - 1.0;
+        start[i] = parameters[i].prior.mean;
+        if (parameters[i].kind == WA_PARAMETER_PK) {
+            start[i] = truth[i] + 0.3 * off;
+        } else if (parameters[i].kind == WA_PARAMETER_LN_AMOUNT) {
+            start[i] = truth[i] + 0.1 * off;
+        }
+    }
+}
+
 /** Readings with noise in both coordinates, and the electrode's errors at the ends of its range. */
 static inline bool case_readings(const struct wa_sample_model *sample,
                                  const struct wa_parameter *parameters, const double *truth,
@@ -133,8 +149,10 @@ static inline bool case_readings(const struct wa_sample_model *sample,
     for (size_t p = 0; p < experiment->count; p++) {
         struct wa_solution solution;
         struct wa_error error;
-        const double volume =
-            fmax(experiment->volume_mL[p] + noise->volume * gsl_ran_ugaussian(random), 0.0);
+        /* Before the first drop there is no volume to misread. */
+        const double deviate = gsl_ran_ugaussian(random);
+        const double read = experiment->volume_mL[p];
+        const double volume = read > 0.0 ? fmax(read + noise->volume * deviate, 0.0) : 0.0;
         if (wa_titration_pH(&titration, volume, 7.0, &solution, NULL, &error) != WA_OK) {
             return false;
         }

@@ -122,8 +122,8 @@ int main(int argument_count, char **arguments)
         experiment.reading[strtoul(arguments[4], NULL, 10)] += 0.7;
     }
     const struct wa_fit_options options = {.most_iterations = 500, .settled = 1e-10};
-    made = made && wa_generic_start(&experiment, &sample, 0.9 * case_moles, start) &&
-           wa_fit_run(&experiment, &sample, &options, start, &fit, &error) == WA_OK;
+    case_start(parameters, truth, count, random, start);
+    made = made && wa_fit_run(&experiment, &sample, &options, start, &fit, &error) == WA_OK;
     const int status = made ? print_fit(c, &experiment, &sample, start, &fit) : 1;
     wa_fit_free(&fit);
     wa_experiment_free(&experiment);

@@ -172,9 +172,10 @@ static enum wa_status read_points(gsl_rng *random, struct wa_simulation *simulat
         struct wa_solution solution;
         const double volume_deviate = gsl_ran_ugaussian(random);
         const double reading_deviate = gsl_ran_ugaussian(random);
-        /* At the start no titrant has been added, and none can be taken back. */
+        /* Before the first drop there is no volume to misread. */
+        const double read = simulation->volume_mL[p];
         const double volume =
-            fmax(simulation->volume_mL[p] + options->noise_volume * volume_deviate, 0.0);
+            read > 0.0 ? fmax(read + options->noise_volume * volume_deviate, 0.0) : 0.0;
         const enum wa_status status =
             wa_titration_pH(&simulation->titration, volume, guess, &solution, NULL, error);
         if (status != WA_OK) {
