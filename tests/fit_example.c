@@ -121,7 +121,8 @@ int main(int argument_count, char **arguments)
     if (argument_count > 4) {
         experiment.reading[strtoul(arguments[4], NULL, 10)] += 0.7;
     }
-    const struct wa_fit_options options = {.most_iterations = 500, .settled = 1e-10};
+    const struct wa_fit_options options = {
+        .most_iterations = 500, .settled = 1e-10, .from_afar = true};
     case_start(parameters, truth, count, random, start);
     made = made && wa_fit_run(&experiment, &sample, &options, start, &fit, &error) == WA_OK;
     const int status = made ? print_fit(c, &experiment, &sample, start, &fit) : 1;

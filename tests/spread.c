@@ -17,6 +17,9 @@
 #define SPREAD_POINTS 60
 #define WATCHED_MAX 6
 
+/* The starts are up to 0.3 in pK and a tenth of the amount off. */
+static const struct wa_fit_options from_afar = {.from_afar = true};
+
 static const double aim_spread = 1.08;
 static const double aim_bias = 0.1;
 static const double aim_cover = 0.02;
@@ -106,7 +109,7 @@ static bool one_run(const struct fit_case *c, const struct wa_noise *noise, gsl_
     case_start(parameters, truth, count, random, start);
     if (!case_readings(&sample, parameters, truth, count, noise, random, experiment) ||
         !bounds(experiment, &sample, parameters, truth, count, noise, variance) ||
-        wa_fit_run(experiment, &sample, NULL, start, &fit, &error) != WA_OK) {
+        wa_fit_run(experiment, &sample, &from_afar, start, &fit, &error) != WA_OK) {
         return false;
     }
     for (int k = 0; fit.converged && k < *watched; k++) {
