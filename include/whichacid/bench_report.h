@@ -3,6 +3,7 @@
 #ifndef WHICHACID_BENCH_REPORT_H
 #define WHICHACID_BENCH_REPORT_H
 
+#include "whichacid/bench_calibrate.h"
 #include "whichacid/bench_standardize.h"
 
 /** Value of "kind" in a file that holds a titrant, and in one that holds an electrode. */
@@ -20,17 +21,34 @@ enum wa_status wa_standardization_text(const struct wa_standardization *work, ch
 enum wa_status wa_standardization_json(const struct wa_standardization *work, char **text,
                                        struct wa_error *error) WA_MUST_USE;
 
+/**
+ * A calibration for people; `after` (NULL: none) is a second one of the same electrode, whose drift
+ * is told.
+ * @param[out] text  malloc'd, terminated
+ */
+enum wa_status wa_electrode_text(const struct wa_electrode *electrode,
+                                 const struct wa_electrode *after,
+                                 const struct wa_electrode_limits *limits, char **text,
+                                 struct wa_error *error) WA_MUST_USE;
+
+/** A calibration as JSON, the drift carried in its uncertainties; ownership as above. */
+enum wa_status wa_electrode_json(const struct wa_electrode *electrode,
+                                 const struct wa_electrode *after,
+                                 const struct wa_electrode_limits *limits, char **text,
+                                 struct wa_error *error) WA_MUST_USE;
+
 /** What a file of this room says of a titrant or an electrode, as notes for a run. */
 struct wa_bench_file {
     char kind[16];
     char titrant[128];
     struct wa_quantity concentration; /**< mol/L */
     struct wa_quantity slope;         /**< of theory */
-    struct wa_quantity offset;        /**< pH at pH 7 */
+    struct wa_quantity offset;        /**< pH at pH `pivot` */
+    double pivot;                     /**< pH about which slope and offset are not correlated */
 };
 
 /**
- * Read a file that wa_standardization_json or wa_calibration_json wrote.
+ * Read a file that wa_standardization_json or wa_electrode_json wrote.
  * @param[out] ours  whether there is such a file and it is one of these. A name that is no file, or
  *                   a file of another kind, gives WA_OK and false: the caller then knows it is
  *                   something else. A name that ends in .json must be one of these.

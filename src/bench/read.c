@@ -47,6 +47,8 @@ static bool fill(const json_t *root, struct wa_bench_file *file)
                file->concentration.value > 0.0;
     }
     const json_t *electrode = json_object_get(root, "electrode");
+    const json_t *pivot = json_object_get(electrode, "pivot_pH");
+    file->pivot = json_is_number(pivot) ? json_number_value(pivot) : 7.0;
     return take(electrode, "slope", "slope_u", &file->slope) &&
            take(electrode, "offset_pH", "offset_u_pH", &file->offset) && file->slope.value > 0.0;
 }

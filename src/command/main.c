@@ -7,6 +7,7 @@ static const struct command commands[] = {
     {"identify", "name the acid or base behind a titration curve", command_identify},
     {"inspect", "show how a file was understood, row by row", command_inspect},
     {"standardize", "concentration of a titrant against a primary standard", command_standardize},
+    {"calibrate", "slope and offset of an electrode from buffer readings", command_calibrate},
     {"table", "check, list or show the reference table", command_table},
     {"simulate", "write a synthetic run from the model", command_simulate},
 };
