@@ -43,8 +43,8 @@ struct wa_bench_file {
     char titrant[128];
     struct wa_quantity concentration; /**< mol/L */
     struct wa_quantity slope;         /**< of theory */
-    struct wa_quantity offset;        /**< pH at pH `pivot` */
-    double pivot;                     /**< pH about which slope and offset are not correlated */
+    struct wa_quantity offset;        /**< pH at pH 7 */
+    double correlation;               /**< of slope and offset */
 };
 
 /**

@@ -28,6 +28,8 @@ struct wa_experiment {
     double *reading;   /**< pH as the electrode showed it */
     long *line;        /**< lines in the file */
     bool titrant_is_base;
+    double pivot;      /**< where slope and offset are not correlated, less 7; 0 unless a
+                            calibration tells their correlation */
     bool uncalibrated; /**< readings were mV without a calibration: the offset is free */
     double temperature_C;
     struct wa_prior temperature;       /**< degree Celsius */
@@ -36,7 +38,7 @@ struct wa_experiment {
     struct wa_prior ln_carbonate;      /**< ln of the carbonate fraction of a base titrant */
     struct wa_prior ln_carbon_dioxide; /**< ln of mol/L dissolved in the sample's water */
     struct wa_prior slope;             /**< electrode slope, 1 is theoretical */
-    struct wa_prior offset;            /**< electrode offset in pH at pH 7 */
+    struct wa_prior offset;            /**< electrode offset in pH at pH 7 + pivot */
     struct wa_prior davies;            /**< linear coefficient of the Davies equation */
     struct wa_prior ln_noise_reading;  /**< ln of the standard deviation of a pH reading */
     struct wa_prior ln_noise_volume;   /**< ln of the standard deviation of a volume in mL */

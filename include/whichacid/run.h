@@ -69,6 +69,7 @@ struct wa_conditions {
     struct wa_noted blank;                 /**< mL of titrant used by the blank */
     struct wa_noted electrode_slope;       /**< fraction of theoretical (0.992) */
     struct wa_noted electrode_offset;      /**< pH at pH 7 */
+    struct wa_noted electrode_correlation; /**< of slope and offset, -1 to 1; unknown: 0 */
     struct wa_noted reading_uncertainty;   /**< pH or mV, standard deviation of one reading */
     struct wa_noted volume_uncertainty;    /**< mL, standard deviation of one volume reading */
     struct wa_noted sample_volume;         /**< mL of a liquid sample */

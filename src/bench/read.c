@@ -47,10 +47,11 @@ static bool fill(const json_t *root, struct wa_bench_file *file)
                file->concentration.value > 0.0;
     }
     const json_t *electrode = json_object_get(root, "electrode");
-    const json_t *pivot = json_object_get(electrode, "pivot_pH");
-    file->pivot = json_is_number(pivot) ? json_number_value(pivot) : 7.0;
+    const json_t *correlation = json_object_get(electrode, "correlation");
+    file->correlation = json_is_number(correlation) ? json_number_value(correlation) : 0.0;
     return take(electrode, "slope", "slope_u", &file->slope) &&
-           take(electrode, "offset_pH", "offset_u_pH", &file->offset) && file->slope.value > 0.0;
+           take(electrode, "offset_pH", "offset_u_pH", &file->offset) && file->slope.value > 0.0 &&
+           fabs(file->correlation) <= 1.0;
 }
 
 enum wa_status wa_bench_read(const char *path, const char *kind, struct wa_bench_file *file,

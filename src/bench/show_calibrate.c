@@ -113,18 +113,20 @@ static json_t *readings_json(const struct wa_electrode *e)
 
 static json_t *electrode_json(const struct wa_electrode *e, const struct wa_electrode_drift *drift)
 {
-    /* Half the drift, taken evenly over the run, is the least that the calibration before it can
-     * be off by. */
-    const double slope_u = drift != NULL ? hypot(e->slope_u, 0.5 * drift->slope) : e->slope_u;
-    const double offset_u =
-        drift != NULL ? hypot(e->pivot_offset_u, 0.5 * drift->offset) : e->pivot_offset_u;
-    return json_pack("{s:o, s:o, s:o, s:o, s:o, s:o, s:o, s:o, s:o, s:o}", "slope",
-                     bench_number(e->slope), "slope_u", bench_number(slope_u), "offset_pH",
-                     bench_number(e->pivot_offset), "offset_u_pH", bench_number(offset_u),
-                     "pivot_pH", bench_number(e->pivot), "offset_at_7_pH", bench_number(e->offset),
-                     "offset_at_7_u_pH", bench_number(e->offset_u), "correlation_at_7",
-                     bench_number(e->correlation), "potential_at_7_mV", bench_number(e->offset_mV),
-                     "temperature_C", bench_number(e->temperature_C));
+    /* A drift spread over the work leaves each run off by about half of it. */
+    const double slope_half = drift != NULL ? 0.5 * drift->slope : 0.0;
+    const double offset_half = drift != NULL ? 0.5 * drift->offset : 0.0;
+    const double slope_u = hypot(e->slope_u, slope_half);
+    const double offset_u = hypot(e->offset_u, offset_half);
+    const double correlation =
+        (e->correlation * e->slope_u * e->offset_u + slope_half * offset_half) /
+        (slope_u * offset_u);
+    return json_pack("{s:o, s:o, s:o, s:o, s:o, s:o, s:o, s:b}", "slope", bench_number(e->slope),
+                     "slope_u", bench_number(slope_u), "offset_pH", bench_number(e->offset),
+                     "offset_u_pH", bench_number(offset_u), "correlation",
+                     bench_number(correlation), "potential_at_7_mV", bench_number(e->offset_mV),
+                     "temperature_C", bench_number(e->temperature_C), "slope_assumed",
+                     e->slope_assumed);
 }
 
 enum wa_status wa_electrode_json(const struct wa_electrode *electrode,

@@ -58,9 +58,17 @@ static error_t give_file(struct note_options *options, const struct wa_bench_fil
                            : give_figure(options, "titrant concentration", &file->concentration,
                                          " mol/L", state);
     }
-    const error_t result = give_figure(options, "electrode slope", &file->slope, "", state);
-    return result != 0 ? result
-                       : give_figure(options, "electrode offset", &file->offset, " pH", state);
+    struct wa_text correlation = {.bytes = NULL};
+    error_t result = give_figure(options, "electrode slope", &file->slope, "", state);
+    if (result == 0) {
+        result = give_figure(options, "electrode offset", &file->offset, " pH", state);
+    }
+    wa_text_append(&correlation, "%.6g", file->correlation);
+    if (result != 0) {
+        wa_text_free(&correlation);
+        return result;
+    }
+    return give_text(options, "electrode correlation", &correlation, state);
 }
 
 /* Take a value that names a file of ours. @return whether it did, as `taken` */
@@ -73,7 +81,7 @@ static error_t take_file(struct note_options *options, const char *kind, const c
         argp_failure(state, 1, 0, "%s: %s", path, error.message);
         return EINVAL;
     }
-    if (*taken && options->owned_count + 2 > sizeof options->owned / sizeof options->owned[0]) {
+    if (*taken && options->owned_count + 3 > sizeof options->owned / sizeof options->owned[0]) {
         argp_error(state, "%s: one file of a titrant and one of an electrode at most", path);
         return EINVAL;
     }

@@ -15,7 +15,7 @@ struct note_options {
     char (*long_names)[40];
     char (*helps)[128];
     size_t name_count;
-    char *owned[4]; /**< texts made from files of standardize and calibrate */
+    char *owned[6]; /**< texts made from files of standardize and calibrate */
     size_t owned_count;
     struct argp argp;
 };

@@ -81,6 +81,17 @@ static struct wa_prior noise_prior(const struct wa_noted *noted, double scale, d
     return (struct wa_prior){log(otherwise), otherwise_u, WA_ORIGIN_DEFAULT, 0};
 }
 
+/* Slope and offset from one calibration are correlated. About one pH they are not: there the offset
+ * has its least uncertainty, and two independent priors say all that is known. */
+static void set_pivot(const struct wa_noted *correlation, struct wa_experiment *experiment)
+{
+    const double r = correlation->known ? correlation->quantity.value : 0.0;
+    struct wa_prior *offset = &experiment->offset;
+    experiment->pivot = -r * offset->u / experiment->slope.u;
+    offset->mean += (experiment->slope.mean - 1.0) * experiment->pivot;
+    offset->u *= sqrt(fmax(1.0 - r * r, 1e-6));
+}
+
 static void set_priors(const struct wa_run *run, double last_volume_mL, double mV_per_pH,
                        struct wa_experiment *experiment)
 {
@@ -101,6 +112,7 @@ static void set_priors(const struct wa_run *run, double last_volume_mL, double m
     experiment->offset = prior_from(
         &c->electrode_offset, c->electrode_offset.known ? c->electrode_offset.quantity.value : 0.0,
         c->electrode_offset.quantity.has_u ? fmax(c->electrode_offset.quantity.u, 1e-5) : 0.06);
+    set_pivot(&c->electrode_correlation, experiment);
     experiment->davies =
         (struct wa_prior){WA_DAVIES_COEFFICIENT, WA_DAVIES_COEFFICIENT_U, WA_ORIGIN_DEFAULT, 0};
     experiment->ln_noise_reading = noise_prior(&c->reading_uncertainty, 1.0 / mV_per_pH,

@@ -262,6 +262,7 @@ enum wa_status wa_model_evaluate(const struct wa_experiment *experiment,
         value_of(parameters, value, count, WA_PARAMETER_SLOPE, 0, experiment->slope.mean);
     const double offset =
         value_of(parameters, value, count, WA_PARAMETER_OFFSET, 0, experiment->offset.mean);
+    const double neutral = 7.0 + experiment->pivot;
     for (size_t p = 0; p < experiment->count; p++) {
         struct wa_solution solution;
         const double volume = experiment->volume_mL[p];
@@ -270,7 +271,7 @@ enum wa_status wa_model_evaluate(const struct wa_experiment *experiment,
         const double ionic_guess = points[p].ionic_strength;
         const double guess = ionic_guess > 0.0
                                  ? points[p].pH
-                                 : 7.0 + (experiment->reading[p] - 7.0 - offset) / slope;
+                                 : neutral + (experiment->reading[p] - neutral - offset) / slope;
         wa_titration_mixture(&titration, volume, &mixture);
         const enum wa_status status =
             wa_mixture_solve_near(&mixture, guess, ionic_guess, &solution, &sensitivity, error);
@@ -281,14 +282,14 @@ enum wa_status wa_model_evaluate(const struct wa_experiment *experiment,
         at.total_L = titration.solution_volume_L + at.added_L;
         points[p].pH = solution.pH;
         points[p].ionic_strength = solution.ionic_strength;
-        points[p].expected = 7.0 + slope * (solution.pH - 7.0) + offset;
+        points[p].expected = neutral + slope * (solution.pH - neutral) + offset;
         points[p].slope = slope * wa_titration_slope(&titration, volume, &sensitivity);
         for (int i = 0; jacobian != NULL && i < count; i++) {
             double *entry = &jacobian[p * (size_t)count + (size_t)i];
             if (parameters[i].kind == WA_PARAMETER_OFFSET) {
                 *entry = 1.0;
             } else if (parameters[i].kind == WA_PARAMETER_SLOPE) {
-                *entry = solution.pH - 7.0;
+                *entry = solution.pH - neutral;
             } else {
                 *entry = slope * derivative(&at, experiment, &parameters[i], value[i]);
             }

@@ -75,6 +75,7 @@ static enum wa_status follow(const struct wa_experiment *experiment, const struc
     const double slope = parameter_value(fit, WA_PARAMETER_SLOPE, experiment->slope.mean);
     const double offset = parameter_value(fit, WA_PARAMETER_OFFSET, experiment->offset.mean);
     const struct wa_titration *titration = &fit->titration;
+    const double neutral = 7.0 + experiment->pivot;
     double guess = 7.0;
     for (size_t i = 0; i < trace->count; i++) {
         struct wa_solution solution;
@@ -85,7 +86,7 @@ static enum wa_status follow(const struct wa_experiment *experiment, const struc
         }
         guess = solution.pH;
         trace->pH[i] = solution.pH;
-        trace->reading[i] = 7.0 + slope * (solution.pH - 7.0) + offset;
+        trace->reading[i] = neutral + slope * (solution.pH - neutral) + offset;
         const double gamma = pow(10.0, wa_davies_log10_gamma(solution.ionic_strength,
                                                              titration->medium.debye_huckel_A,
                                                              titration->davies_coefficient));

@@ -37,8 +37,11 @@ static const struct shown *shown_of(enum wa_parameter_kind kind)
     return &shown_parameters[0];
 }
 
-static char *name_of(const struct wa_parameter *parameter, const struct shown *shown)
+static char *name_of(const struct wa_parameter *parameter, const struct shown *shown, double pivot)
 {
+    if (parameter->kind == WA_PARAMETER_OFFSET && pivot != 0.0) {
+        return wa_sentence("electrode offset at pH %.1f", 7.0 + pivot);
+    }
     return parameter->kind == WA_PARAMETER_PK
                ? wa_sentence("pKa %d of the generic acid", parameter->step + 1)
                : wa_sentence("%s", shown->name);
@@ -59,7 +62,7 @@ enum wa_status wa_fill_parameters(const struct wa_identification *work, struct w
         const struct wa_parameter *from = &fit->parameters[i];
         const struct shown *shown = shown_of(from->kind);
         struct wa_result_parameter *to = &result->parameters[result->parameter_count];
-        to->name = name_of(from, shown);
+        to->name = name_of(from, shown, result->experiments[0].pivot);
         if (to->name == NULL) {
             return wa_fail_memory(error);
         }

@@ -115,9 +115,10 @@ static enum wa_status prepare(const struct wa_experiment *experiment, const stru
     const double gamma =
         exp(ln10 * wa_davies_log10_gamma(best->ionic_strength, t->medium.debye_huckel_A,
                                          t->davies_coefficient));
+    const double neutral = 7.0 + experiment->pivot;
     for (size_t p = 0; p < experiment->count; p += stride) {
         struct station *at = &screening->stations[screening->count++];
-        const double pH = 7.0 + (experiment->reading[p] - 7.0 - offset) / screening->slope;
+        const double pH = neutral + (experiment->reading[p] - neutral - offset) / screening->slope;
         set_station(t, pH, gamma, 1e-3 * experiment->volume_mL[p], 1e-3 * best->noise_volume, at);
         at->weight = 1.0 - best->outlier[p];
     }

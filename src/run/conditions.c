@@ -27,6 +27,7 @@ static const struct plain plains[] = {
     {"temperature", AT(temperature), WA_DIMENSION_TEMPERATURE, -10, 110, false},
     {"background electrolyte", AT(background), WA_DIMENSION_CONCENTRATION, 0, 20, false},
     {"blank", AT(blank), WA_DIMENSION_VOLUME, -1e3, 1e3, false},
+    {"electrode correlation", AT(electrode_correlation), WA_DIMENSION_NUMBER, -1, 1, false},
     {"volume uncertainty", AT(volume_uncertainty), WA_DIMENSION_VOLUME, 0, 1e3, false},
     {"sample volume", AT(sample_volume), WA_DIMENSION_VOLUME, 0, 1e6, true},
     {"sample density", AT(sample_density), WA_DIMENSION_DENSITY, 0, 25, true},

@@ -19,6 +19,7 @@ static const struct wa_note_name names[] = {
     {"solvent", "water", "what the sample was dissolved in"},
     {"electrode slope", "99.2 ± 0.4 %", "slope of the electrode, of theory or in mV"},
     {"electrode offset", "0.02 ± 0.01 pH", "reading error at pH 7, in pH or mV"},
+    {"electrode correlation", "0.15", "of the uncertainties of slope and offset"},
     {"buffer 1", "4.005 = 172.3 mV", "a buffer reading, for readings in mV"},
     {"buffer 2", "9.180 = -127.0 mV", "a second buffer reading"},
     {"reading uncertainty", "0.01", "standard deviation of one reading"},
