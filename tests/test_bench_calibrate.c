@@ -59,7 +59,7 @@ static void perfect_electrode_in_mV(void **state)
     struct wa_electrode e;
     struct wa_error error;
     assert_int_equal(
-        read_text(*state, "buffer,temperature,mV\n4.00,25,177.479\n7,25,0\n10.00,25,-177.479\n", &e,
+        read_text(*state, "buffer,temperature,mV\n4.00,25,177.478\n7,25,0\n10.00,25,-177.478\n", &e,
                   &error),
         WA_OK);
     assert_int_equal(wa_electrode_calibrate(&e, 0.0, &error), WA_OK);

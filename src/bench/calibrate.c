@@ -4,8 +4,9 @@
 #include <math.h>
 #include <stdio.h>
 
-static const double neutral = 7.0;           /* isopotential point of a usual glass electrode */
-static const double nernst_mV_K = 0.1984171; /* ln10 R / F per kelvin, CODATA 2018, in mV */
+static const double neutral = 7.0;              /* isopotential point of a usual glass electrode */
+static const double gas_constant = 8.314462618; /* J/(mol K), CODATA 2018 */
+static const double faraday = 96485.33212;      /* C/mol */
 static const double kelvin_offset = 273.15;
 static const double least_apart = 1.0; /* pH between the outermost of two buffers */
 
@@ -20,7 +21,7 @@ struct wa_electrode_limits wa_electrode_limits_default(void)
 
 static double mV_per_pH(double temperature_C)
 {
-    return nernst_mV_K * (temperature_C + kelvin_offset);
+    return 1e3 * log(10.0) * gas_constant * (temperature_C + kelvin_offset) / faraday;
 }
 
 /* Weighted sums of a straight line. */
