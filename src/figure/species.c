@@ -57,17 +57,20 @@ void figure_draw_species(struct wa_text *script, const struct wa_result *result)
         wa_text_append(&curves, "%s$fractions using 1:%d with lines lw 2 lc rgb '%s' dt %s title ",
                        shown > 0 ? ", " : "", lost + 2, colours[shown % 7], dashes[shown % 7]);
         figure_quote(&curves, label);
-        wa_text_append(script, "set label ");
-        figure_quote(script, label);
         const bool at_start = peak<trace->count / 20, at_end = peak + 2> trace->count;
-        wa_text_append(script, " at first %.9g, first %.9g offset %s,0.8 %s front\n",
-                       trace->pH[peak], most,
-                       at_start ? "0.3"
-                       : at_end ? "-0.3"
-                                : "0",
-                       at_start ? "left"
-                       : at_end ? "right"
-                                : "center");
+        /* At an edge half-way up, other curves cross just there: the legend has to do. */
+        if ((!at_start && !at_end) || most > 0.75) {
+            wa_text_append(script, "set label ");
+            figure_quote(script, label);
+            wa_text_append(script, " at first %.9g, first %.9g offset %s,0.8 %s front\n",
+                           trace->pH[peak], most,
+                           at_start ? "0.3"
+                           : at_end ? "-0.3"
+                                    : "0",
+                           at_start ? "left"
+                           : at_end ? "right"
+                                    : "center");
+        }
         shown++;
     }
     figure_axes(script, "pH", "fraction of the acid system");

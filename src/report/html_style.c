@@ -43,7 +43,8 @@ static const char style[] =
     ".sign p{display:inline-block;width:30%;margin:0 2.5% 0 0;padding-top:2.8rem}\n"
     ".sign span{display:block;border-top:1px solid #1b1b1b;padding-top:.2rem;"
     "font-size:.88rem;color:#4d4d4d}\n"
-    "@media (max-width:40rem){body{font-size:15px}.verdict{padding:.2rem .7rem .6rem}"
+    "@media (max-width:40rem){body{font-size:15px}.scroll "
+    "table{min-width:34rem}.verdict{padding:.2rem .7rem .6rem}"
     ".facts th,.facts td{padding-right:.7rem}.sign p{width:100%}}\n";
 
 /* Lengths in points and millimetres hold on A4 and on US letter alike: only the page's size
