@@ -30,7 +30,8 @@ struct wa_experiment {
     bool titrant_is_base;
     double pivot;      /**< where slope and offset are not correlated, less 7; 0 unless a
                             calibration tells their correlation */
-    bool uncalibrated; /**< readings were mV without a calibration: the offset is free */
+    bool titrant_assumed; /**< nobody said what was in the burette: a strong one is assumed */
+    bool uncalibrated;    /**< readings were mV without a calibration: the offset is free */
     double temperature_C;
     struct wa_prior temperature;       /**< degree Celsius */
     struct wa_prior ln_volume;         /**< ln of the solution volume in L at the start */

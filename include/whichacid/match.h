@@ -9,6 +9,14 @@
 /** Prior weight of "not in the table". */
 #define WA_NOT_IN_TABLE_PRIOR 0.1
 
+/** Share that goes to "not in the table" when nobody said what the titrant was. */
+#define WA_TITRANT_DOUBT 0.1
+
+/** Of the electrodes whose calibration nobody noted, this share is taken to be off by more: by this
+ * much, in pH. */
+#define WA_STRAY_ELECTRODE_SHARE 0.15
+#define WA_STRAY_ELECTRODE_U 0.2
+
 /** Molar masses that an unknown may have, g/mol, log-uniform. */
 #define WA_MOLAR_MASS_LOW 40.0
 #define WA_MOLAR_MASS_HIGH 1000.0

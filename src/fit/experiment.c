@@ -128,6 +128,7 @@ static void set_titrant(const struct wa_table *table, const struct wa_titrant *t
                         bool is_base, struct wa_experiment *experiment)
 {
     experiment->titrant_is_base = is_base;
+    experiment->titrant_assumed = titrant == NULL;
     experiment->equivalents = titrant != NULL && titrant->protons > 0 ? titrant->protons : 1;
     experiment->titrant_charge = is_base ? experiment->equivalents : -experiment->equivalents;
     experiment->titrant_is_weak = titrant != NULL && table != NULL && titrant->acid >= 0;

@@ -118,7 +118,8 @@ static char *narrowed_sentence(const struct wa_identification *work, size_t coun
                                double threshold)
 {
     struct wa_text text = {.bytes = NULL};
-    wa_text_append(&text, "The data cannot tell these apart: ");
+    wa_text_append(&text, "%s",
+                   count == 1 ? "The data point to " : "The data cannot tell these apart: ");
     for (size_t i = 0; i < count && i < named_at_most; i++) {
         wa_text_append(&text, "%s", i == 0 ? "" : i + 1 == count ? " and " : ", ");
         append_name(work, &work->match.candidates[i], &text);
@@ -126,7 +127,8 @@ static char *narrowed_sentence(const struct wa_identification *work, size_t coun
     if (count > named_at_most) {
         wa_text_append(&text, " and %zu more", count - named_at_most);
     }
-    wa_text_append(&text, "; together they hold %.0f %%", 100.0 * share);
+    wa_text_append(&text, count == 1 ? ", but only with %.0f %%" : "; together they hold %.0f %%",
+                   100.0 * share);
     if (work->match.not_in_table > 1.0 - threshold) {
         wa_text_append(&text, ", and %.0f %% stays with a substance that is not in the table",
                        100.0 * work->match.not_in_table);

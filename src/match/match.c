@@ -67,7 +67,8 @@ static double log_mass_evidence_generic(const struct wa_titrated_mass *mass, dou
     return density - log_normal_density(ln_amount, broad->mean, broad->u);
 }
 
-static double log_not_in_table(const struct wa_proton_study *study,
+static double log_not_in_table(const struct wa_experiment *experiment,
+                               const struct wa_proton_study *study,
                                const struct wa_titrated_mass *mass)
 {
     double sum = -INFINITY;
@@ -76,6 +77,7 @@ static double log_not_in_table(const struct wa_proton_study *study,
         const int index = wa_fit_find(&generic->fit, WA_PARAMETER_LN_AMOUNT, 0, 0);
         const struct wa_parameter *amount = &generic->fit.parameters[index];
         sum = log_sum(sum, generic->fit.log_evidence + generic->log_prior +
+                               wa_log_stray_electrode(experiment, &generic->fit) +
                                log_mass_evidence_generic(mass, amount->value, &amount->prior));
     }
     return sum;
@@ -83,13 +85,14 @@ static double log_not_in_table(const struct wa_proton_study *study,
 
 /* ln of the weight of all that is no single substance of the table: one acid that nobody named, or
  * two acids. A mixture's mass says as little as an unknown's. */
-static double log_unknown(const struct wa_proton_study *study, const struct wa_titrated_mass *mass,
+static double log_unknown(const struct wa_experiment *experiment,
+                          const struct wa_proton_study *study, const struct wa_titrated_mass *mass,
                           const struct wa_match_options *options)
 {
     const struct wa_generic *best = &study->generic[0];
     const int index = wa_fit_find(&best->fit, WA_PARAMETER_LN_AMOUNT, 0, 0);
     const struct wa_parameter *amount = &best->fit.parameters[index];
-    const double one = log(WA_NOT_IN_TABLE_PRIOR) + log_not_in_table(study, mass);
+    const double one = log(WA_NOT_IN_TABLE_PRIOR) + log_not_in_table(experiment, study, mass);
     if (options == NULL || options->log_two_acids == 0.0) {
         return one;
     }
@@ -127,7 +130,9 @@ static enum wa_status fit_group(const struct wa_experiment *experiment, const st
     const enum wa_status status =
         wa_fit_run(experiment, &group->sample, &options, start, group->fit, error);
     group->log_curve =
-        status == WA_OK && group->fit->converged ? group->fit->log_evidence : -INFINITY;
+        status == WA_OK && group->fit->converged
+            ? group->fit->log_evidence + wa_log_stray_electrode(experiment, group->fit)
+            : -INFINITY;
     return status;
 }
 
@@ -280,6 +285,15 @@ static void normalise(double log_unknown, struct wa_match *match)
     match->not_in_table = isfinite(log_unknown) ? exp(log_unknown - total) : 0.0;
 }
 
+/* A titrant that nobody named may not be the strong one assumed: no candidate can be sure then. */
+static void doubt_titrant(struct wa_match *match)
+{
+    match->not_in_table = 1.0 - (1.0 - WA_TITRANT_DOUBT) * (1.0 - match->not_in_table);
+    for (size_t i = 0; i < match->candidate_count; i++) {
+        match->candidates[i].probability *= 1.0 - WA_TITRANT_DOUBT;
+    }
+}
+
 enum wa_status wa_match_run(const struct wa_experiment *experiment,
                             const struct wa_proton_study *study,
                             const struct wa_titrated_mass *mass, const struct wa_table *table,
@@ -317,7 +331,10 @@ enum wa_status wa_match_run(const struct wa_experiment *experiment,
     for (size_t i = 0; i < match->candidate_count; i++) {
         match->candidates[i].log_weight += known_share;
     }
-    normalise(closed ? -INFINITY : log_unknown(study, mass, options), match);
+    normalise(closed ? -INFINITY : log_unknown(experiment, study, mass, options), match);
+    if (experiment->titrant_assumed && !closed) {
+        doubt_titrant(match);
+    }
     qsort(match->candidates, match->candidate_count, sizeof *match->candidates, by_log_weight);
     match->forms_considered = list->form_count;
     match->models_considered = list->count;

@@ -41,4 +41,11 @@ void wa_groups_free(struct wa_group_list *list);
 enum wa_status wa_groups_screen(const struct wa_experiment *experiment, const struct wa_fit *best,
                                 struct wa_group_list *list, struct wa_error *error) WA_MUST_USE;
 
+/**
+ * ln of the factor by which a fit's evidence changes when some electrodes of unknown calibration
+ * are allowed to be far off: the prior of the offset becomes a mixture of the one fitted with and a
+ * wide one. Zero when the calibration was noted.
+ */
+double wa_log_stray_electrode(const struct wa_experiment *experiment, const struct wa_fit *fit);
+
 #endif

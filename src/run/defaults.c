@@ -8,6 +8,7 @@ static const double slope_u = 0.012;         /* fraction of theory */
 static const double carbonate_u = 0.015;     /* fraction of the titrant's alkalinity, one-sided */
 static const double temperature_u = 2.0;     /* degree Celsius */
 static const double concentration_u = 0.005; /* relative */
+static const double sample_as_solution_u = 0.05; /* relative; water may have been added */
 
 const char *const *wa_conditions_defaults(void)
 {
@@ -156,6 +157,29 @@ static enum wa_status calibrate(struct wa_run *run, struct wa_error *error)
     return status;
 }
 
+/* A liquid titrated as it is, such as natural water, is its own solution. A sample that was
+ * weighed, or whose density was noted, is a substance that was dissolved in something. */
+static enum wa_status fill_solution_volume(struct wa_run *run, struct wa_error *error)
+{
+    struct wa_conditions *conditions = &run->conditions;
+    const struct wa_noted *sample = &conditions->sample_volume;
+    if (conditions->solution_volume.known) {
+        return WA_OK;
+    }
+    if (sample->known && sample->quantity.value > 0 && !conditions->sample_mass.known &&
+        !conditions->sample_density.known && !conditions->aliquot.known) {
+        conditions->solution_volume =
+            assumed(sample->quantity.value, sample_as_solution_u * sample->quantity.value);
+        return wa_run_remark(run, error,
+                             "The solution volume was not noted: the sample volume, %g mL, is "
+                             "taken for it.",
+                             sample->quantity.value);
+    }
+    return wa_run_remark(run, error,
+                         "The solution volume was not noted: 50 mL within a factor of two is "
+                         "assumed.");
+}
+
 enum wa_status wa_run_fill_defaults(struct wa_run *run, struct wa_error *error)
 {
     enum wa_status status = fill_temperature(run, error);
@@ -168,10 +192,5 @@ enum wa_status wa_run_fill_defaults(struct wa_run *run, struct wa_error *error)
     if (status == WA_OK && run->reading_kind == WA_READING_PH) {
         status = fill_electrode(run, error);
     }
-    if (status == WA_OK && !run->conditions.solution_volume.known) {
-        status = wa_run_remark(run, error,
-                               "The solution volume was not noted, so dilution is not corrected "
-                               "for.");
-    }
-    return status;
+    return status == WA_OK ? fill_solution_volume(run, error) : status;
 }
