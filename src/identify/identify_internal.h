@@ -47,6 +47,11 @@ enum wa_status wa_fill_equivalence(const struct wa_identification *work, struct 
 enum wa_status wa_fill_protons(const struct wa_identification *work, struct wa_result *result,
                                struct wa_error *error) WA_MUST_USE;
 
+/** The end of a hydrogen carbonate titration in an open vessel. */
+enum wa_status wa_fill_hydrogen_carbonate(const struct wa_identification *work,
+                                          struct wa_result *result,
+                                          struct wa_error *error) WA_MUST_USE;
+
 /** The candidates listed, each with its reasons. */
 enum wa_status wa_fill_candidates(const struct wa_identification *work, struct wa_result *result,
                                   struct wa_error *error) WA_MUST_USE;
