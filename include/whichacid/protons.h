@@ -30,7 +30,7 @@ struct wa_generic {
 struct wa_proton_study {
     struct wa_generic generic[WA_GENERIC_MAX];
     int count;
-    double by_count[WA_GENERIC_STEPS_MAX + 1]; /**< probability of each number of shown protons */
+    double by_count[WA_PROTONS_MAX + 1]; /**< probability of each number of shown protons */
     double log_evidence; /**< of "some acid not in the table", priors over the generic acids in */
 };
 
@@ -41,6 +41,16 @@ struct wa_proton_study {
 enum wa_status wa_proton_study_run(const struct wa_experiment *experiment,
                                    const struct wa_curve *curve, struct wa_proton_study *study,
                                    struct wa_error *error) WA_MUST_USE;
+
+/**
+ * Add a generic acid that starts where a fit of a known one ended: when a substance of the table
+ * describes the curve better than every generic acid that was found, the search has missed it.
+ * @param[in] sample  of the known one: one acid system
+ */
+enum wa_status wa_proton_study_seed(const struct wa_experiment *experiment,
+                                    const struct wa_sample_model *sample, const struct wa_fit *fit,
+                                    struct wa_proton_study *study,
+                                    struct wa_error *error) WA_MUST_USE;
 
 /** Free what a study owns. NULL is allowed. */
 void wa_proton_study_free(struct wa_proton_study *study);

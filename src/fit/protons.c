@@ -2,6 +2,7 @@
 
 #include <math.h>
 #include <stdlib.h>
+#include <string.h>
 
 /* Prior weight of n protons: the shares among the acids that laboratories meet, common practice. */
 static const double prior_by_steps[WA_GENERIC_STEPS_MAX] = {0.50, 0.28, 0.13, 0.05, 0.025, 0.015};
@@ -89,6 +90,7 @@ static void weigh(const struct wa_experiment *experiment, struct wa_proton_study
         sum += generic->probability;
     }
     study->log_evidence = best + log(sum);
+    memset(study->by_count, 0, sizeof study->by_count);
     for (int i = 0; i < study->count; i++) {
         struct wa_generic *generic = &study->generic[i];
         generic->probability /= sum;
@@ -99,16 +101,26 @@ static void weigh(const struct wa_experiment *experiment, struct wa_proton_study
     qsort(study->generic, (size_t)study->count, sizeof study->generic[0], by_evidence);
 }
 
+/* Prior weight of a generic acid. The constants of one acid are an unordered set under their prior:
+ * n! orders are one. */
+static double log_prior_of(int protons, bool hidden, int step_count)
+{
+    const int bounded = protons < WA_GENERIC_STEPS_MAX ? protons : WA_GENERIC_STEPS_MAX;
+    return log(prior_by_steps[bounded - 1] * 0.5 *
+               (hidden ? prior_already_lost : 1.0 - prior_already_lost)) +
+           lgamma(step_count + 1.0);
+}
+
 /* Fit one generic acid and keep it when it converged. */
 static enum wa_status try_generic(const struct wa_experiment *experiment,
                                   const struct wa_curve *curve, int step_count, int lost,
-                                  int charge, double prior, struct wa_proton_study *study,
-                                  double *log_evidence, struct wa_error *error)
+                                  int charge, struct wa_proton_study *study, double *log_evidence,
+                                  struct wa_error *error)
 {
     struct wa_generic *generic = &study->generic[study->count];
     *generic = (struct wa_generic){.step_count = step_count, .lost = lost, .charge = charge};
-    /* The constants of one acid are an unordered set under their prior: n! orders are one. */
-    generic->log_prior = log(prior) + lgamma(step_count + 1.0);
+    const int protons = experiment->titrant_is_base ? step_count - lost : lost;
+    generic->log_prior = log_prior_of(protons, step_count > protons, step_count);
     wa_generic_sample(experiment, step_count, lost, charge, &generic->sample);
     const enum wa_status status = fit_generic(experiment, curve, generic, error);
     *log_evidence = -INFINITY;
@@ -138,11 +150,9 @@ enum wa_status wa_proton_study_run(const struct wa_experiment *experiment,
             const int lost = base ? hidden : protons;
             for (int charged = 0; charged <= 1; charged++) {
                 const int charge = charged == 0 ? 0 : (base ? 1 : steps);
-                const double prior = prior_by_steps[protons - 1] * 0.5 *
-                                     (hidden == 1 ? prior_already_lost : 1.0 - prior_already_lost);
                 double evidence;
-                const enum wa_status status = try_generic(experiment, curve, steps, lost, charge,
-                                                          prior, study, &evidence, error);
+                const enum wa_status status =
+                    try_generic(experiment, curve, steps, lost, charge, study, &evidence, error);
                 if (status != WA_OK) {
                     wa_proton_study_free(study);
                     return status;
@@ -164,6 +174,49 @@ enum wa_status wa_proton_study_run(const struct wa_experiment *experiment,
         weigh(experiment, study);
     }
     return WA_OK;
+}
+
+/* Protons that the spectators of a sample model tell to be missing at the start. */
+static int lost_of(const struct wa_sample_model *sample)
+{
+    return sample->parts[0].charge + (int)lround(sample->spectator_charge[0]);
+}
+
+enum wa_status wa_proton_study_seed(const struct wa_experiment *experiment,
+                                    const struct wa_sample_model *sample, const struct wa_fit *fit,
+                                    struct wa_proton_study *study, struct wa_error *error)
+{
+    const struct wa_model_part *part = &sample->parts[0];
+    const int lost = lost_of(sample);
+    const int protons = experiment->titrant_is_base ? part->step_count - lost : lost;
+    if (study->count >= WA_GENERIC_MAX || sample->part_count != 1 || part->count != 1.0 ||
+        protons < 1) {
+        return WA_OK;
+    }
+    struct wa_generic *generic = &study->generic[study->count];
+    struct wa_parameter parameters[WA_PARAMETERS_MAX];
+    double start[WA_PARAMETERS_MAX];
+    *generic =
+        (struct wa_generic){.step_count = part->step_count, .lost = lost, .charge = part->charge};
+    generic->log_prior = log_prior_of(protons, part->step_count > protons, part->step_count);
+    wa_generic_sample(experiment, part->step_count, lost, part->charge, &generic->sample);
+    const int count = wa_fit_parameters(experiment, &generic->sample, parameters);
+    for (int i = 0; i < count; i++) {
+        const int index =
+            wa_fit_find(fit, parameters[i].kind, parameters[i].part, parameters[i].step);
+        start[i] = index >= 0                              ? fit->parameters[index].value
+                   : parameters[i].kind == WA_PARAMETER_PK ? part->pK[parameters[i].step]
+                                                           : parameters[i].prior.mean;
+    }
+    const enum wa_status status =
+        wa_fit_run(experiment, &generic->sample, NULL, start, &generic->fit, error);
+    if (status == WA_OK && generic->fit.converged) {
+        study->count++;
+        weigh(experiment, study);
+    } else {
+        wa_fit_free(&generic->fit);
+    }
+    return status;
 }
 
 void wa_proton_study_free(struct wa_proton_study *study)

@@ -12,6 +12,7 @@ static const double default_threshold = 0.95;
 static const double default_amount_limit = 0.05;
 static const double default_pKa_limit = 0.5;
 static const double excess_taken_from = 0.8;
+static const double search_missed = 20.0;      /* ln of the evidence ratio */
 static const double default_mass_u = 0.0003;   /* g; a balance that reads to 0.1 mg, twice */
 static const double default_density_u = 0.002; /* relative */
 static const double default_sample_volume_u = 0.003;
@@ -118,23 +119,56 @@ static enum wa_status explain(struct wa_identification *work, struct wa_experime
     return status;
 }
 
+static enum wa_status match(struct wa_identification *work, const struct wa_experiment *experiment,
+                            struct wa_error *error)
+{
+    const struct wa_match_options options = {
+        .among = work->options->among,
+        .among_count = work->options->among_count,
+        .log_two_acids = work->explanations.log_two_acids,
+    };
+    const enum wa_status status = wa_match_run(experiment, &work->study, &work->mass, work->table,
+                                               &options, &work->match, error);
+    work->matched = status == WA_OK;
+    return status;
+}
+
+/* When a substance of the table describes the curve far better than every generic acid, the search
+ * for the latter has missed: it is taken up from there, and the match done again. */
+static enum wa_status reconsider(struct wa_identification *work,
+                                 const struct wa_experiment *experiment, struct wa_error *error)
+{
+    const struct wa_candidate *best =
+        work->match.candidate_count > 0 ? &work->match.candidates[0] : NULL;
+    if (best == NULL || best->log_curve < work->study.generic[0].fit.log_evidence + search_missed) {
+        return WA_OK;
+    }
+    enum wa_status status =
+        wa_proton_study_seed(experiment, best->sample, best->fit, &work->study, error);
+    if (status == WA_OK) {
+        wa_match_free(&work->match);
+        work->matched = false;
+        status = match(work, experiment, error);
+    }
+    return status;
+}
+
 static enum wa_status compute(struct wa_identification *work, struct wa_result *result,
                               struct wa_error *error)
 {
+    struct wa_experiment *experiment = &result->experiments[0];
     work->mass = wa_titrated_mass_of(&result->runs.runs[0].conditions);
-    enum wa_status status = explain(work, &result->experiments[0], &result->curves[0], error);
-    if (status == WA_OK && work->study.count > 0) {
-        /* What is beside the acid weighs too: the mass says nothing of the acid's molar mass then.
-         */
-        work->mass.known = work->mass.known && !(result->experiments[0].excess_u > 0.0);
-        const struct wa_match_options options = {
-            .among = work->options->among,
-            .among_count = work->options->among_count,
-            .log_two_acids = work->explanations.log_two_acids,
-        };
-        status = wa_match_run(&result->experiments[0], &work->study, &work->mass, work->table,
-                              &options, &work->match, error);
-        work->matched = status == WA_OK;
+    enum wa_status status = explain(work, experiment, &result->curves[0], error);
+    if (status != WA_OK || work->study.count == 0) {
+        return status;
+    }
+    /* What is beside the acid weighs too: the mass says nothing of the acid's molar mass then. */
+    work->mass.known = work->mass.known && !(experiment->excess_u > 0.0);
+    status = match(work, experiment, error);
+    if (status == WA_OK) {
+        status = reconsider(work, experiment, error);
+    }
+    if (status == WA_OK) {
         weigh_charges(work);
     }
     return status;

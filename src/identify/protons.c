@@ -209,13 +209,13 @@ static void fill_counts(const struct wa_proton_study *study, struct wa_result *r
 {
     result->proton_count = study->generic[0].shown;
     result->proton_probability = study->by_count[result->proton_count];
-    for (int count = 0; count <= WA_GENERIC_STEPS_MAX; count++) {
+    for (int count = 0; count <= WA_PROTONS_MAX; count++) {
         if (study->by_count[count] > result->proton_probability) {
             result->proton_count = count;
             result->proton_probability = study->by_count[count];
         }
     }
-    for (int count = 0; count <= WA_GENERIC_STEPS_MAX; count++) {
+    for (int count = 0; count <= WA_PROTONS_MAX; count++) {
         const size_t slot = result->proton_alternative_count;
         if (count != result->proton_count && study->by_count[count] > 1e-4 &&
             slot < sizeof result->proton_alternatives / sizeof result->proton_alternatives[0]) {
