@@ -131,6 +131,23 @@ static enum wa_status add_form(const struct wa_table *table, const struct wa_for
     return WA_OK;
 }
 
+/* Solubility of the uncharged species of the first acid system, where the table tells it: it is
+ * what stays undissolved, or comes out when a salt is titrated back. */
+static void set_solubility(const struct wa_table *table, struct wa_group *group)
+{
+    group->solubility = INFINITY;
+    for (size_t f = 0; group->acid >= 0 && f < table->form_count; f++) {
+        const struct wa_form *form = &table->forms[f];
+        const struct wa_form_part *part = &form->parts[0];
+        if (form->part_count == 1 && part->acid == group->acid && part->count == 1 &&
+            part->lost == table->acids[group->acid].charge && isfinite(form->solubility_mol_L) &&
+            form->solubility_mol_L > 0.0) {
+            group->solubility = fmin(group->solubility, form->solubility_mol_L);
+            group->solid_species = part->lost;
+        }
+    }
+}
+
 /* Even over acid systems, then over the forms of one. */
 static enum wa_status set_priors(const struct wa_table *table, struct wa_group_list *list,
                                  struct wa_error *error)
@@ -171,6 +188,7 @@ static enum wa_status group_forms(const struct wa_table *table,
             }
             struct wa_group *group = &list->groups[list->count++];
             *group = (struct wa_group){.acid = first_acid(forms[i])};
+            set_solubility(table, group);
             wa_match_sample(table, forms[i], experiment, ionic_strength, ln_amount, &group->sample);
         }
         const enum wa_status status =

@@ -117,6 +117,53 @@ static void start_values(const struct wa_experiment *experiment, const struct wa
     }
 }
 
+/* Whether the fitted amount leaves the uncharged species beyond its solubility at some point. */
+static bool leaves_solid(const struct wa_experiment *experiment, const struct wa_group *group)
+{
+    if (!isfinite(group->solubility) || group->sample.part_count == 0) {
+        return false;
+    }
+    const struct wa_titration *titration = &group->fit->titration;
+    const struct wa_titration_component *component = &titration->components[0];
+    bool solid = false;
+    for (size_t p = 0; !solid && p < experiment->count; p++) {
+        double fraction[WA_PROTONS_MAX + 1];
+        const double total_L = titration->solution_volume_L + 1e-3 * experiment->volume_mL[p];
+        wa_system_fractions(&component->system, pow(10.0, -experiment->reading[p]), 0.8, fraction);
+        solid =
+            component->sample_moles / total_L * fraction[group->solid_species] > group->solubility;
+    }
+    return solid;
+}
+
+/* Fit once more with a solid phase; the evidence is that of both, one in two, and the better fit is
+ * kept. Warmth, another solvent or patience may have kept everything in solution. */
+static enum wa_status fit_with_solid(const struct wa_experiment *experiment, const double *start,
+                                     struct wa_group *group, struct wa_error *error)
+{
+    struct wa_sample_model solid = group->sample;
+    const struct wa_fit_options options = {.from_afar = true};
+    struct wa_fit fit;
+    solid.parts[0].solubility = group->solubility;
+    solid.parts[0].solid_species = group->solid_species;
+    const enum wa_status status = wa_fit_run(experiment, &solid, &options, start, &fit, error);
+    if (status != WA_OK) {
+        return status;
+    }
+    if (fit.converged) {
+        const double log_solid = fit.log_evidence + wa_log_stray_electrode(experiment, &fit);
+        if (log_solid > group->log_curve) {
+            wa_fit_free(group->fit);
+            *group->fit = fit;
+            group->sample = solid;
+            fit = (struct wa_fit){.parameter_count = 0};
+        }
+        group->log_curve = log_sum(group->log_curve, log_solid) - log(2.0);
+    }
+    wa_fit_free(&fit);
+    return WA_OK;
+}
+
 static enum wa_status fit_group(const struct wa_experiment *experiment, const struct wa_fit *best,
                                 struct wa_group *group, struct wa_error *error)
 {
@@ -133,7 +180,9 @@ static enum wa_status fit_group(const struct wa_experiment *experiment, const st
         status == WA_OK && group->fit->converged
             ? group->fit->log_evidence + wa_log_stray_electrode(experiment, group->fit)
             : -INFINITY;
-    return status;
+    return status == WA_OK && leaves_solid(experiment, group)
+               ? fit_with_solid(experiment, start, group, error)
+               : status;
 }
 
 /* Best form's mass evidence at the screened amount: so that a form that the mass favours is not

@@ -11,6 +11,8 @@ struct wa_group {
     int *forms; /**< table indices */
     size_t form_count;
     double log_prior;   /**< ln of the share of one form */
+    double solubility;  /**< mol/L of the uncharged species, INFINITY when unknown */
+    int solid_species;  /**< protons lost by that species */
     double screened;    /**< approximate ln of the evidence of the curve */
     double ln_amount;   /**< approximate, where a fit starts */
     struct wa_fit *fit; /**< NULL until it is fitted */

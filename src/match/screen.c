@@ -27,6 +27,7 @@ struct station {
     double known_pH;     /* its derivative by pH */
     double noise_charge; /* mol, by the noise of the volume */
     double weight;       /* probability of being no outlier */
+    double total_L;      /* volume in the vessel */
 };
 
 struct screening {
@@ -40,6 +41,7 @@ struct screening {
 
 /* One form on trial. */
 struct trial {
+    const struct wa_group *group;
     const struct wa_sample_model *sample;
     struct wa_system systems[WA_PARTS_MAX];
     int count; /* unknowns */
@@ -78,6 +80,7 @@ static void set_station(const struct wa_titration *t, double pH, double gamma, d
     double titrant_charge = t->titrant_charge;
     at->activity = exp(-ln10 * pH);
     at->gamma = gamma;
+    at->total_L = total_L;
     const double hydrogen = t->medium.density * at->activity / gamma;
     const double hydroxide = t->medium.density * exp(ln10 * (pH - t->medium.pKw)) / gamma;
     at->known = (hydrogen - hydroxide) * total_L + t->titrant_charge * added_L;
@@ -192,22 +195,53 @@ static bool first_amount(const struct screening *screening, struct trial *trial)
     return isfinite(trial->ln_amount);
 }
 
+/* Where the form's uncharged species is beyond its solubility, what is dissolved follows from the
+ * solubility and not from the amount: replace charge and derivatives by that. The constants' part
+ * is left out, which a screening can bear. */
+static void saturate(const struct trial *trial, const struct station *at, double amount,
+                     double *charge, double *by_pH, double *row)
+{
+    const struct wa_group *group = trial->group;
+    const struct wa_model_part *part = &trial->sample->parts[0];
+    double fraction[WA_PROTONS_MAX + 1], variance;
+    if (!isfinite(group->solubility) || trial->sample->part_count == 0) {
+        return;
+    }
+    wa_system_fractions(&trial->systems[0], at->activity, at->gamma, fraction);
+    const double share = fraction[group->solid_species];
+    const double dissolved = group->solubility * at->total_L / share;
+    if (amount * part->count <= dissolved) {
+        return;
+    }
+    const double lost = mean_lost(fraction, part->step_count, &variance);
+    const double mean = part->charge - lost;
+    const double spectators = amount * trial->sample->spectator_charge[0];
+    *charge = dissolved * mean + spectators;
+    *by_pH = -ln10 * dissolved * (variance + mean * (group->solid_species - lost));
+    row[AMOUNT] = spectators;
+    for (int i = CONSTANTS; i < trial->count; i++) {
+        row[i] = 0.0;
+    }
+}
+
 static void add_station(const struct screening *screening, const struct station *at,
                         struct trial *trial)
 {
     double by_pH, row[UNKNOWNS_MAX];
     const double amount = exp(trial->ln_amount);
-    const double charge = form_charge(trial, at, &by_pH, &row[CONSTANTS]);
-    const double total_pH = amount * by_pH + at->known_pH;
+    double charge = amount * form_charge(trial, at, &by_pH, &row[CONSTANTS]);
     const double u_offset = screening->experiment->offset.u;
-    row[AMOUNT] = amount * charge;
-    row[OFFSET] = -total_pH / screening->slope * u_offset;
+    by_pH *= amount;
+    row[AMOUNT] = charge;
     for (int i = CONSTANTS; i < trial->count; i++) {
         row[i] *= amount;
     }
+    saturate(trial, at, amount, &charge, &by_pH, row);
+    const double total_pH = by_pH + at->known_pH;
+    row[OFFSET] = -total_pH / screening->slope * u_offset;
     /* The offset acts linearly, the constants and the amount are in the charge already. */
     const double residual =
-        amount * charge + at->known +
+        charge + at->known +
         row[OFFSET] * (trial->value[OFFSET] + screening->offset_mean / u_offset);
     const double sigma = hypot(total_pH * screening->noise_pH, at->noise_charge);
     const double weight = at->weight / (sigma * sigma);
@@ -268,7 +302,7 @@ static double step(struct trial *trial)
 
 static double screen_group(const struct screening *screening, struct wa_group *group)
 {
-    struct trial trial = {.sample = &group->sample};
+    struct trial trial = {.group = group, .sample = &group->sample};
     double log_determinant = NAN;
     set_systems(&trial);
     if (!first_amount(screening, &trial)) {
