@@ -21,6 +21,9 @@ struct wa_prior {
     long line;
 };
 
+/** Nuisances for a suspected fault: src/fit/fault.h. */
+struct wa_fault;
+
 /** A titration ready for fitting: points in pH and everything that was noted, as priors. */
 struct wa_experiment {
     size_t count;
@@ -51,6 +54,7 @@ struct wa_experiment {
     int weak_step_count;
     double weak_count; /**< molecules of it in one formula unit of titrant */
     double weak_pK[WA_PROTONS_MAX];
+    const struct wa_fault *fault; /**< borrowed: a fault that is weighed, NULL in ordinary fits */
 };
 
 /** One acid system in a sample model. */
@@ -90,6 +94,10 @@ enum wa_parameter_kind {
     WA_PARAMETER_LN_VOLUME,
     WA_PARAMETER_TEMPERATURE,
     WA_PARAMETER_EXCESS,
+    WA_PARAMETER_DRIFT,         /**< of the reading over the whole run, pH; faults only from here */
+    WA_PARAMETER_LN_UPTAKE,     /**< ln of mol of carbon dioxide taken up during the run */
+    WA_PARAMETER_VOLUME_STEP,   /**< mL that the later rows lack */
+    WA_PARAMETER_LN_SOLUBILITY, /**< ln of mol/L that the first part can reach as weighed */
 };
 
 /** A parameter, its prior and its posterior. */

@@ -1,5 +1,6 @@
 /* What was assumed, and what the data show beside the answer. */
 #include "identify/identify_internal.h"
+#include "whichacid/diagnosis.h"
 
 #include <math.h>
 #include <stdlib.h>
@@ -115,6 +116,28 @@ static enum wa_status find_from_curve(struct wa_result *result, struct wa_error 
     return status;
 }
 
+/* What went wrong at the bench. */
+static enum wa_status find_faults(const struct wa_identification *work, struct wa_result *result,
+                                  struct wa_error *error)
+{
+    struct wa_diagnosis diagnosis;
+    enum wa_status status =
+        wa_diagnose(&result->runs.runs[0], &result->experiments[0], &work->study,
+                    work->explanations.log_two_acids, &diagnosis, error);
+    if (status != WA_OK) {
+        return status;
+    }
+    for (int k = 0; status == WA_OK && k < WA_FAULT_KINDS; k++) {
+        struct wa_suspicion *suspicion = &diagnosis.suspicions[k];
+        if (suspicion->said) {
+            status = add_finding(result, suspicion->code, suspicion->sentence, error);
+            suspicion->sentence = NULL;
+        }
+    }
+    wa_diagnosis_free(&diagnosis);
+    return status;
+}
+
 enum wa_status wa_fill_findings(const struct wa_identification *work, struct wa_result *result,
                                 struct wa_error *error)
 {
@@ -130,6 +153,9 @@ enum wa_status wa_fill_findings(const struct wa_identification *work, struct wa_
     }
     if (status == WA_OK && work->study.count > 0) {
         status = find_range(work, result, error);
+    }
+    if (status == WA_OK && work->study.count > 0) {
+        status = find_faults(work, result, error);
     }
     return status;
 }
