@@ -11,17 +11,19 @@ static const double misread_mL = 1.0;
 static const double farthest = 3.5;   /* standard uncertainties from the curve */
 static const double out_by_mL = 0.03; /* of its place among the rows around it */
 
-/* The first two numbers of a row as written. */
-static bool two_numbers(const char *text, double *numbers)
+/* The numbers in the first two numeric cells of a row as written. */
+static bool two_numbers(const struct wa_run *run, const char *text, double *numbers)
 {
+    const char delimiters[] = {run->delimiter, '\0'};
     int found = 0;
     while (*text != '\0' && found < 2) {
+        text += strspn(text, " ");
+        const size_t length = strcspn(text, delimiters);
         struct wa_number number;
-        const size_t used = wa_number_parse(text, strlen(text), &number);
-        if (used > 0 && !number.grouped) {
+        if (wa_number_parse(text, length, &number) > 0 && !number.grouped) {
             numbers[found++] = number.value;
         }
-        text += used;
+        text += length;
         text += *text != '\0' ? 1 : 0;
     }
     return found == 2;
@@ -79,7 +81,7 @@ void wa_weigh_set_aside(const struct wa_inquiry *inquiry, struct wa_suspicion *s
     for (size_t i = 0; i < run->set_aside_count; i++) {
         const struct wa_set_aside *row = &run->set_aside[i];
         double numbers[2];
-        if (strstr(row->reason, "out of order") == NULL || !two_numbers(row->text, numbers)) {
+        if (strstr(row->reason, "out of order") == NULL || !two_numbers(run, row->text, numbers)) {
             continue;
         }
         for (int sign = -1; sign <= 1; sign += 2) {
