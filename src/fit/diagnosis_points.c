@@ -25,8 +25,9 @@ bool wa_inquiry_point(const struct wa_experiment *experiment, const struct wa_fi
     }
     const double slope = value_of(fit, WA_PARAMETER_SLOPE, experiment->slope.mean);
     const double offset = value_of(fit, WA_PARAMETER_OFFSET, experiment->offset.mean);
+    const double neutral = 7.0 + experiment->pivot;
     *point = (struct wa_point_model){
-        .expected = 7.0 + slope * (solution.pH - 7.0) + offset,
+        .expected = neutral + slope * (solution.pH - neutral) + offset,
         .pH = solution.pH,
         .slope = slope * wa_titration_slope(&fit->titration, volume_mL, &sensitivity),
         .ionic_strength = solution.ionic_strength};
