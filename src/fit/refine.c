@@ -17,6 +17,7 @@ static const int default_iterations = 60;
 static const double first_bluntness = 64.0; /* and its share that is left after each round */
 static const double bluntness_left = 0.6;
 static const int halvings = 8;
+static const int rounds_undamped = 12;
 static const double longest_pK_step = 1.5;
 static const double longest_ln_step = 0.7;
 static const double default_settled = 5e-3; /* in posterior standard deviations */
@@ -282,6 +283,14 @@ static double bluntness(struct work *work, int round)
     return fmax(fmin(wanted, first_bluntness * pow(bluntness_left, round)), 1.0);
 }
 
+/* Half the change of the noise levels: the two can trade places for ever, each round's levels asking
+ * for the parameters that ask for the others. */
+static void damp_noise(const struct wa_noise *before, struct wa_noise *noise)
+{
+    noise->reading = sqrt(before->reading * noise->reading);
+    noise->volume = sqrt(before->volume * noise->volume);
+}
+
 /* Alternate until parameters and noise stand still. */
 static bool iterate(struct work *work, int most_iterations, double settled, bool from_afar)
 {
@@ -303,6 +312,9 @@ static bool iterate(struct work *work, int most_iterations, double settled, bool
         expect_squares(work);
         const struct wa_noise before = work->noise;
         wa_noise_update(work->experiment, work->points, work->square, work->inlier, &work->noise);
+        if (round >= rounds_undamped) {
+            damp_noise(&before, &work->noise);
+        }
         const double noise_move = fmax(fabs(log(work->noise.reading / before.reading)),
                                        fabs(log(work->noise.volume / before.volume)));
         if (move < settled && noise_move < settled) {

@@ -48,8 +48,10 @@ static enum wa_status assume_priors(const struct wa_identification *work, struct
         status = add_assumption(
             result, "prior-purity",
             wa_sentence("The sample is taken as reagent grade (99.7 \u00b1 0.4 %%) with a weight "
-                        "of %.0f %%, else as found (94 \u00b1 6 %%).",
-                        100.0 * WA_PURITY_REAGENT_SHARE),
+                        "of %.0f %%, else as found: below 100 %%, half-normal with a scale of "
+                        "%.0f %%, so that a measured molar mass below the form's is hardly "
+                        "excused.",
+                        100.0 * WA_PURITY_REAGENT_SHARE, 100.0 * WA_PURITY_FOUND_LN_S),
             error);
     }
     if (status == WA_OK && work->options->among_count > 0) {
