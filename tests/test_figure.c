@@ -42,7 +42,7 @@ static const char *const said[WA_FIGURE_KINDS][6] = {
                         "intercept"},
     [WA_FIGURE_RESIDUALS] = {"titrant volume / mL", "(measured", "/ u", "residual"},
     [WA_FIGURE_RUNNER_UP] = {"titrant volume / mL", "residual / u", "citric acid", "(rank 1)",
-                             "(rank 2)"},
+                             "measured"},
     [WA_FIGURE_SPECIES] = {"pH", "fraction of the acid system", "H₃A", "H₂A⁻", "HA²⁻", "A³⁻"},
 };
 

@@ -57,6 +57,7 @@ struct wa_sensitivity {
     double spectator_ionic;                       /**< per mol/L */
     double concentration[WA_COMPONENTS_MAX];      /**< per mol/L */
     double pK[WA_COMPONENTS_MAX][WA_PROTONS_MAX]; /**< per unit of pK */
+    double ln_solubility[WA_COMPONENTS_MAX];      /**< per unit of ln, 0 where all is dissolved */
     double davies_coefficient;                    /**< per unit */
     double pKw;                                   /**< per unit */
 };
@@ -78,6 +79,16 @@ enum wa_status wa_mixture_solve(const struct wa_mixture *mixture, double pH_gues
 enum wa_status wa_mixture_solve_near(const struct wa_mixture *mixture, double pH_guess,
                                      double ionic_guess, struct wa_solution *solution,
                                      struct wa_sensitivity *sensitivity,
+                                     struct wa_error *error) WA_MUST_USE;
+
+/**
+ * Solubility of one species of a system in pure water, from that of all its species together as
+ * tables give it.
+ * @param[in] total    mol/L of the saturated solution
+ * @param[in] species  protons lost by the species that is the solid
+ */
+enum wa_status wa_species_solubility(const struct wa_system *system, const struct wa_medium *medium,
+                                     double total, int species, double *solubility,
                                      struct wa_error *error) WA_MUST_USE;
 
 /** One acid system in a titration. */

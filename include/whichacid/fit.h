@@ -21,6 +21,9 @@ struct wa_prior {
     long line;
 };
 
+/** Nuisances for a suspected fault: src/fit/fault.h. */
+struct wa_fault;
+
 /** A titration ready for fitting: points in pH and everything that was noted, as priors. */
 struct wa_experiment {
     size_t count;
@@ -28,8 +31,8 @@ struct wa_experiment {
     double *reading;   /**< pH as the electrode showed it */
     long *line;        /**< lines in the file */
     bool titrant_is_base;
-    double pivot;      /**< where slope and offset are not correlated, less 7; 0 unless a
-                            calibration tells their correlation */
+    double pivot;         /**< where slope and offset are not correlated, less 7; 0 unless a
+                               calibration tells their correlation */
     bool titrant_assumed; /**< nobody said what was in the burette: a strong one is assumed */
     bool uncalibrated;    /**< readings were mV without a calibration: the offset is free */
     double temperature_C;
@@ -52,6 +55,7 @@ struct wa_experiment {
     int weak_step_count;
     double weak_count; /**< molecules of it in one formula unit of titrant */
     double weak_pK[WA_PROTONS_MAX];
+    const struct wa_fault *fault; /**< borrowed: a fault that is weighed, NULL in ordinary fits */
 };
 
 /** One acid system in a sample model. */
@@ -65,6 +69,7 @@ struct wa_model_part {
     double pK_slope[WA_PROTONS_MAX]; /**< d pK / d temperature, per K */
     double solubility;               /**< mol/L of the species below, INFINITY when it dissolves */
     int solid_species;
+    double ln_solubility_u; /**< prior standard deviation of its logarithm; 0 holds it */
 };
 
 /** What is in the beaker, up to the amounts. */
@@ -91,6 +96,10 @@ enum wa_parameter_kind {
     WA_PARAMETER_LN_VOLUME,
     WA_PARAMETER_TEMPERATURE,
     WA_PARAMETER_EXCESS,
+    WA_PARAMETER_DRIFT,         /**< of the reading over the whole run, pH; faults only from here */
+    WA_PARAMETER_LN_UPTAKE,     /**< ln of mol of carbon dioxide taken up during the run */
+    WA_PARAMETER_VOLUME_STEP,   /**< mL that the later rows lack */
+    WA_PARAMETER_LN_SOLUBILITY, /**< ln of mol/L that the first part can reach as weighed */
 };
 
 /** A parameter, its prior and its posterior. */
@@ -126,7 +135,7 @@ struct wa_fit_options {
     int most_iterations; /**< 0: 60 */
     bool from_afar; /**< the start may be far off: begin with blunt weights and sharpen them, so
                        that the points of a jump are not taken for outliers where they stand */
-    double settled;      /**< converged when no step is longer, in posterior u; 0: 5e-3 */
+    double settled; /**< converged when no step is longer, in posterior u; 0: 5e-3 */
 };
 
 /**

@@ -3,8 +3,10 @@
 #ifndef WHICHACID_MATCH_H
 #define WHICHACID_MATCH_H
 
+#include "whichacid/observation.h"
 #include "whichacid/protons.h"
 #include "whichacid/reference.h"
+#include "whichacid/weights.h"
 
 /** Prior weight of "not in the table". */
 #define WA_NOT_IN_TABLE_PRIOR 0.1
@@ -21,12 +23,12 @@
 #define WA_MOLAR_MASS_LOW 40.0
 #define WA_MOLAR_MASS_HIGH 1000.0
 
-/** Purity of a sample: a stated mixture of "reagent grade" and "as found" (ln of the fraction). */
+/** Purity of a sample: a stated mixture of "reagent grade" (ln of the fraction, normal) and "as
+ * found" (below 1, half-normal in ln): a sample holds hardly more than its mass. */
 #define WA_PURITY_REAGENT_SHARE 0.8
 #define WA_PURITY_REAGENT_LN_MEAN (-0.003)
 #define WA_PURITY_REAGENT_LN_U 0.004
-#define WA_PURITY_FOUND_LN_MEAN (-0.06)
-#define WA_PURITY_FOUND_LN_U 0.06
+#define WA_PURITY_FOUND_LN_S 0.08
 
 /** The mass that was titrated. */
 struct wa_titrated_mass {
@@ -46,7 +48,11 @@ struct wa_candidate {
     double probability;
     double ln_amount; /**< ln of mol of formula units, from the fit */
     double ln_amount_u;
-    double log_curve;                     /**< ln of the evidence of the curve alone */
+    double log_prior;    /**< ln of the share before the data */
+    double log_curve;    /**< ln of the evidence of the curve alone */
+    double log_mass;     /**< ln of what the mass says, 0 without one */
+    double log_observed; /**< ln of the likelihood of what else was observed */
+    bool row_doubted;    /**< its constants fit only when the table's uncertainties are widened */
     const struct wa_fit *fit;             /**< owned by the match */
     const struct wa_sample_model *sample; /**< owned by the match */
 };
@@ -65,6 +71,11 @@ void wa_match_sample(const struct wa_table *table, const struct wa_form *form,
 struct wa_match_options {
     const char *const *among; /**< closed set of keys, NULL: the whole table */
     size_t among_count;
+    const struct wa_weight_list *prior;    /**< NULL: even over acid systems, then over forms */
+    const struct wa_observation *observed; /**< what else was observed */
+    size_t observed_count;
+    const char *const *wanted; /**< keys whose forms are fitted however they are screened */
+    size_t wanted_count;
     double log_two_acids; /**< ln of prior and evidence of two acids; 0: not weighed */
 };
 
@@ -73,6 +84,8 @@ struct wa_match {
     struct wa_candidate *candidates;
     size_t candidate_count;
     double not_in_table; /**< probability; 0 when the set was closed */
+    double not_in_table_prior;
+    double log_unknown; /**< ln of prior times evidence of "not in the table" */
     size_t forms_considered;
     size_t models_considered;         /**< distinct sample models among these forms */
     size_t models_fitted;             /**< of these, fitted fully after screening */

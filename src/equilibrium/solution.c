@@ -279,11 +279,12 @@ static double respond(const double row[2], double d_charge, double d_ionic)
 
 static void component_sensitivity(const struct wa_component *component, const struct moments *m,
                                   const double row[2], double activity, double gamma,
-                                  double *by_concentration, double *by_pK)
+                                  double *by_concentration, double *by_ln_solubility, double *by_pK)
 {
     const struct wa_system *system = component->system;
     const double c = m->concentration;
     *by_concentration = m->saturated ? 0.0 : respond(row, m->z, 0.5 * m->z2);
+    *by_ln_solubility = m->saturated ? respond(row, c * m->z, 0.5 * c * m->z2) : 0.0;
     double fraction[WA_PROTONS_MAX + 1];
     const double sum = species_weights(system, activity, gamma, fraction);
     /* Raising pK_k lowers the weight of every species past step k alike. */
@@ -328,7 +329,8 @@ static void differentiate(const struct wa_mixture *mixture, const struct state *
     sensitivity->davies_coefficient = respond(row, balance->charge_L * d_L, balance->ionic_L * d_L);
     for (int k = 0; k < mixture->component_count; k++) {
         component_sensitivity(&mixture->components[k], &balance->moments[k], row, activity, gamma,
-                              &sensitivity->concentration[k], sensitivity->pK[k]);
+                              &sensitivity->concentration[k], &sensitivity->ln_solubility[k],
+                              sensitivity->pK[k]);
     }
 }
 

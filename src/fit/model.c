@@ -1,5 +1,6 @@
 /* From parameter values to the composition of a titration, and the derivatives of each reading by
  * each parameter, by the chain rule over the sensitivities of the equilibrium. */
+#include "fit/fault.h"
 #include "fit/fit_internal.h"
 
 #include <math.h>
@@ -61,7 +62,10 @@ static void set_parts(const struct wa_sample_model *sample, const struct wa_para
         }
         set_system(component, part->charge, part->step_count, pK[k]);
         component->sample_moles = part->count * amount[part->substance];
-        component->solubility = part->solubility;
+        component->solubility =
+            k > 0 ? part->solubility
+                  : exp(value_of(parameters, value, count, WA_PARAMETER_LN_SOLUBILITY, 0,
+                                 log(part->solubility)));
         component->solid_species = part->solid_species;
     }
     titration->component_count = sample->part_count;
@@ -145,7 +149,10 @@ struct instant {
     const struct wa_sensitivity *sensitivity;
     const struct wa_titration *titration;
     const struct wa_sample_model *sample;
+    const struct wa_mixture *mixture;
+    const struct wa_solution *solution;
     struct wa_layout layout;
+    struct wa_fault_share share;
     double added_L;
     double total_L;
     double pKw_slope;
@@ -211,6 +218,23 @@ static double by_temperature(const struct instant *at)
     return sum;
 }
 
+/* d pH / d ln solubility while some solid is there, by a small difference: the solver gives no
+ * derivative by a solubility, and only a suspected fault asks for one. */
+static double by_solubility(const struct instant *at)
+{
+    static const double part = 1e-4;
+    if (!at->solution->saturated[0]) {
+        return 0.0;
+    }
+    struct wa_mixture mixture = *at->mixture;
+    struct wa_solution solution;
+    mixture.components[0].solubility *= 1.0 + part;
+    return wa_mixture_solve_near(&mixture, at->solution->pH, at->solution->ionic_strength,
+                                 &solution, NULL, NULL) == WA_OK
+               ? (solution.pH - at->solution->pH) / part
+               : 0.0;
+}
+
 /* d pH / d parameter at one point; electrode parameters are handled by the caller. */
 static double derivative(const struct instant *at, const struct wa_experiment *experiment,
                          const struct wa_parameter *parameter, double value)
@@ -239,8 +263,15 @@ static double derivative(const struct instant *at, const struct wa_experiment *e
         return by_temperature(at);
     case WA_PARAMETER_EXCESS:
         return (-s->spectator_charge + copysign(0.5, value) * s->spectator_ionic) / at->total_L;
+    case WA_PARAMETER_LN_UPTAKE:
+        return s->concentration[at->layout.carbonate] * exp(value) * at->share.uptake / at->total_L;
+    case WA_PARAMETER_VOLUME_STEP:
+        return at->share.step * wa_titration_slope(t, 1e3 * at->added_L, s);
+    case WA_PARAMETER_LN_SOLUBILITY:
+        return by_solubility(at);
     case WA_PARAMETER_OFFSET:
     case WA_PARAMETER_SLOPE:
+    case WA_PARAMETER_DRIFT:
         break;
     }
     return 0.0;
@@ -263,26 +294,38 @@ enum wa_status wa_model_evaluate(const struct wa_experiment *experiment,
     const double offset =
         value_of(parameters, value, count, WA_PARAMETER_OFFSET, 0, experiment->offset.mean);
     const double neutral = 7.0 + experiment->pivot;
+    const double drift = value_of(parameters, value, count, WA_PARAMETER_DRIFT, 0, 0.0);
+    const double step = value_of(parameters, value, count, WA_PARAMETER_VOLUME_STEP, 0, 0.0);
+    const double uptake =
+        exp(value_of(parameters, value, count, WA_PARAMETER_LN_UPTAKE, 0, -INFINITY));
     for (size_t p = 0; p < experiment->count; p++) {
         struct wa_solution solution;
-        const double volume = experiment->volume_mL[p];
         struct wa_mixture mixture;
+        at.share = wa_fault_share(experiment->fault, p);
+        const double volume = fmax(experiment->volume_mL[p] + at.share.step * step, 0.0);
         /* The last evaluation is the best start, the measured reading the first. */
         const double ionic_guess = points[p].ionic_strength;
         const double guess = ionic_guess > 0.0
                                  ? points[p].pH
                                  : neutral + (experiment->reading[p] - neutral - offset) / slope;
         wa_titration_mixture(&titration, volume, &mixture);
+        at.added_L = 1e-3 * volume;
+        at.total_L = titration.solution_volume_L + at.added_L;
+        if (uptake > 0.0) {
+            mixture.components[at.layout.carbonate].concentration +=
+                uptake * at.share.uptake / at.total_L;
+        }
         const enum wa_status status =
             wa_mixture_solve_near(&mixture, guess, ionic_guess, &solution, &sensitivity, error);
         if (status != WA_OK) {
             return status;
         }
-        at.added_L = 1e-3 * volume;
-        at.total_L = titration.solution_volume_L + at.added_L;
+        at.mixture = &mixture;
+        at.solution = &solution;
         points[p].pH = solution.pH;
         points[p].ionic_strength = solution.ionic_strength;
-        points[p].expected = neutral + slope * (solution.pH - neutral) + offset;
+        points[p].expected =
+            neutral + slope * (solution.pH - neutral) + offset + drift * at.share.course;
         points[p].slope = slope * wa_titration_slope(&titration, volume, &sensitivity);
         for (int i = 0; jacobian != NULL && i < count; i++) {
             double *entry = &jacobian[p * (size_t)count + (size_t)i];
@@ -290,6 +333,8 @@ enum wa_status wa_model_evaluate(const struct wa_experiment *experiment,
                 *entry = 1.0;
             } else if (parameters[i].kind == WA_PARAMETER_SLOPE) {
                 *entry = solution.pH - neutral;
+            } else if (parameters[i].kind == WA_PARAMETER_DRIFT) {
+                *entry = at.share.course;
             } else {
                 *entry = slope * derivative(&at, experiment, &parameters[i], value[i]);
             }

@@ -1,4 +1,5 @@
 /* Which parameters a fit has, and their priors. */
+#include "fit/fault.h"
 #include "fit/fit_internal.h"
 
 #include <math.h>
@@ -44,6 +45,36 @@ static void add_nuisances(const struct wa_experiment *experiment, struct wa_para
     }
 }
 
+static void add_fault(const struct wa_fault *fault, struct wa_parameter *parameters, int *count)
+{
+    const struct {
+        enum wa_parameter_kind kind;
+        const struct wa_prior *prior;
+    } all[] = {
+        {WA_PARAMETER_DRIFT, &fault->drift},
+        {WA_PARAMETER_LN_UPTAKE, &fault->ln_uptake},
+        {WA_PARAMETER_VOLUME_STEP, &fault->volume_step},
+        {WA_PARAMETER_LN_SOLUBILITY, &fault->ln_solubility},
+    };
+    for (size_t i = 0; i < sizeof all / sizeof all[0]; i++) {
+        if (all[i].prior->u > 0.0) {
+            add(parameters, count, all[i].kind, 0, 0, *all[i].prior);
+        }
+    }
+}
+
+struct wa_fault_share wa_fault_share(const struct wa_fault *fault, size_t point)
+{
+    struct wa_fault_share share = {.course = 0.0};
+    if (fault != NULL) {
+        share.course = fault->drift.u > 0.0 ? fault->course[point] : 0.0;
+        share.uptake = fault->ln_uptake.u > 0.0 ? fault->uptake[point] : 0.0;
+        share.step =
+            fault->volume_step.u > 0.0 && point >= fault->step_row && point < fault->step_end;
+    }
+    return share;
+}
+
 int wa_fit_parameters(const struct wa_experiment *experiment, const struct wa_sample_model *sample,
                       struct wa_parameter parameters[WA_PARAMETERS_MAX])
 {
@@ -57,10 +88,21 @@ int wa_fit_parameters(const struct wa_experiment *experiment, const struct wa_sa
             }
         }
     }
+    for (int k = 0; k < sample->part_count; k++) {
+        const struct wa_model_part *part = &sample->parts[k];
+        if (isfinite(part->solubility) && part->ln_solubility_u > 0.0) {
+            const struct wa_prior prior = {.mean = log(part->solubility),
+                                           .u = part->ln_solubility_u};
+            add(parameters, &count, WA_PARAMETER_LN_SOLUBILITY, k, 0, prior);
+        }
+    }
     for (int a = 0; a < sample->substance_count; a++) {
         add(parameters, &count, WA_PARAMETER_LN_AMOUNT, a, 0, sample->ln_amount[a]);
     }
     add_nuisances(experiment, parameters, &count);
+    if (experiment->fault != NULL) {
+        add_fault(experiment->fault, parameters, &count);
+    }
     return count;
 }
 

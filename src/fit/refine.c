@@ -17,6 +17,9 @@ static const int default_iterations = 60;
 static const double first_bluntness = 64.0; /* and its share that is left after each round */
 static const double bluntness_left = 0.6;
 static const int halvings = 8;
+static const int rounds_undamped = 12;
+static const double afar_reading = 0.1;  /* pH */
+static const double afar_volume = 0.005; /* of the last volume */
 static const double longest_pK_step = 1.5;
 static const double longest_ln_step = 0.7;
 static const double default_settled = 5e-3; /* in posterior standard deviations */
@@ -282,6 +285,14 @@ static double bluntness(struct work *work, int round)
     return fmax(fmin(wanted, first_bluntness * pow(bluntness_left, round)), 1.0);
 }
 
+/* Half the change of the noise levels: the two can trade places for ever, each round's levels
+ * asking for the parameters that ask for the others. */
+static void damp_noise(const struct wa_noise *before, struct wa_noise *noise)
+{
+    noise->reading = sqrt(before->reading * noise->reading);
+    noise->volume = sqrt(before->volume * noise->volume);
+}
+
 /* Alternate until parameters and noise stand still. */
 static bool iterate(struct work *work, int most_iterations, double settled, bool from_afar)
 {
@@ -303,6 +314,9 @@ static bool iterate(struct work *work, int most_iterations, double settled, bool
         expect_squares(work);
         const struct wa_noise before = work->noise;
         wa_noise_update(work->experiment, work->points, work->square, work->inlier, &work->noise);
+        if (round >= rounds_undamped) {
+            damp_noise(&before, &work->noise);
+        }
         const double noise_move = fmax(fabs(log(work->noise.reading / before.reading)),
                                        fabs(log(work->noise.volume / before.volume)));
         if (move < settled && noise_move < settled) {
@@ -435,6 +449,19 @@ static void free_work(struct work *work)
     gsl_vector_free(work->trial);
 }
 
+/* Noise levels to start from; from afar no lower than what a start may be off by. */
+static void start_noise(const struct wa_experiment *experiment, bool from_afar,
+                        struct wa_noise *noise)
+{
+    const double last = experiment->volume_mL[experiment->count - 1];
+    noise->reading = exp(experiment->ln_noise_reading.mean);
+    noise->volume = exp(experiment->ln_noise_volume.mean);
+    if (from_afar) {
+        noise->reading = fmax(noise->reading, afar_reading);
+        noise->volume = fmax(noise->volume, afar_volume * last);
+    }
+}
+
 enum wa_status wa_fit_run(const struct wa_experiment *experiment,
                           const struct wa_sample_model *sample,
                           const struct wa_fit_options *options, const double *start,
@@ -462,9 +489,9 @@ enum wa_status wa_fit_run(const struct wa_experiment *experiment,
         const struct wa_prior *prior = &fit->parameters[i].prior;
         gsl_vector_set(work.deviation, (size_t)i, (start[i] - prior->mean) / prior->u);
     }
-    work.noise.reading = exp(experiment->ln_noise_reading.mean);
-    work.noise.volume = exp(experiment->ln_noise_volume.mean);
-    fit->converged = iterate(&work, most, settled, options != NULL && options->from_afar);
+    const bool from_afar = options != NULL && options->from_afar;
+    start_noise(experiment, from_afar, &work.noise);
+    fit->converged = iterate(&work, most, settled, from_afar);
     if (work.evaluated && isfinite(work.log_determinant)) {
         store(&work, fit);
     } else {

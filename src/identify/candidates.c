@@ -56,13 +56,19 @@ static bool within_window(const struct wa_experiment *experiment, double pKa)
     return pKa > lowest - 1.0 && pKa < highest + 0.3;
 }
 
-/* How far the curve pulls a constant from its reference value: the difference over the square root
- * of the variance that the data took away from the prior. */
-static double pull(const struct wa_parameter *parameter)
+/* What the curve alone says of a constant, less the table's value, in the uncertainty of both; NaN
+ * when it says next to nothing. The fit's prior is taken out of its posterior, and it may have been
+ * wider than the table's. */
+static double pull(const struct wa_parameter *parameter, double table_u)
 {
-    const double gained = parameter->prior.u * parameter->prior.u - parameter->u * parameter->u;
-    const double informative = 0.02 * parameter->prior.u * parameter->prior.u;
-    return gained > informative ? (parameter->value - parameter->prior.mean) / sqrt(gained) : NAN;
+    const double prior = 1.0 / (parameter->prior.u * parameter->prior.u);
+    const double gained = 1.0 / (parameter->u * parameter->u) - prior;
+    if (!(gained > 0.02 * prior)) {
+        return NAN;
+    }
+    const double alone = parameter->prior.mean +
+                         (parameter->value - parameter->prior.mean) * (gained + prior) / gained;
+    return (alone - parameter->prior.mean) / sqrt(1.0 / gained + table_u * table_u);
 }
 
 static void fill_constants(const struct wa_table *table, const struct wa_candidate *candidate,
@@ -82,7 +88,9 @@ static void fill_constants(const struct wa_table *table, const struct wa_candida
         listed->pKa_u[i] = acid->steps[i].u;
         listed->seen[i] = within_window(experiment, acid->steps[i].pKa);
         listed->pKa_deviation[i] =
-            index >= 0 && listed->seen[i] ? pull(&candidate->fit->parameters[index]) : NAN;
+            index >= 0 && listed->seen[i]
+                ? pull(&candidate->fit->parameters[index], candidate->sample->parts[part].pK_u[i])
+                : NAN;
     }
 }
 

@@ -1,5 +1,6 @@
 /* What was assumed, and what the data show beside the answer. */
 #include "identify/identify_internal.h"
+#include "whichacid/diagnosis.h"
 
 #include <math.h>
 #include <stdlib.h>
@@ -47,8 +48,10 @@ static enum wa_status assume_priors(const struct wa_identification *work, struct
         status = add_assumption(
             result, "prior-purity",
             wa_sentence("The sample is taken as reagent grade (99.7 \u00b1 0.4 %%) with a weight "
-                        "of %.0f %%, else as found (94 \u00b1 6 %%).",
-                        100.0 * WA_PURITY_REAGENT_SHARE),
+                        "of %.0f %%, else as found: below 100 %%, half-normal with a scale of "
+                        "%.0f %%, so that a measured molar mass below the form's is hardly "
+                        "excused.",
+                        100.0 * WA_PURITY_REAGENT_SHARE, 100.0 * WA_PURITY_FOUND_LN_S),
             error);
     }
     if (status == WA_OK && work->options->among_count > 0) {
@@ -115,6 +118,28 @@ static enum wa_status find_from_curve(struct wa_result *result, struct wa_error 
     return status;
 }
 
+/* What went wrong at the bench. */
+static enum wa_status find_faults(const struct wa_identification *work, struct wa_result *result,
+                                  struct wa_error *error)
+{
+    struct wa_diagnosis diagnosis;
+    enum wa_status status =
+        wa_diagnose(&result->runs.runs[0], &result->experiments[0], &work->study,
+                    work->explanations.log_two_acids, &diagnosis, error);
+    if (status != WA_OK) {
+        return status;
+    }
+    for (int k = 0; status == WA_OK && k < WA_FAULT_KINDS; k++) {
+        struct wa_suspicion *suspicion = &diagnosis.suspicions[k];
+        if (suspicion->said) {
+            status = add_finding(result, suspicion->code, suspicion->sentence, error);
+            suspicion->sentence = NULL;
+        }
+    }
+    wa_diagnosis_free(&diagnosis);
+    return status;
+}
+
 enum wa_status wa_fill_findings(const struct wa_identification *work, struct wa_result *result,
                                 struct wa_error *error)
 {
@@ -130,6 +155,9 @@ enum wa_status wa_fill_findings(const struct wa_identification *work, struct wa_
     }
     if (status == WA_OK && work->study.count > 0) {
         status = find_range(work, result, error);
+    }
+    if (status == WA_OK && work->study.count > 0) {
+        status = find_faults(work, result, error);
     }
     return status;
 }

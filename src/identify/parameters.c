@@ -24,6 +24,7 @@ static const struct shown shown_parameters[] = {
     {WA_PARAMETER_DAVIES, "Davies coefficient", "", 1.0, false},
     {WA_PARAMETER_LN_VOLUME, "solution volume at the start", "mL", 1e3, true},
     {WA_PARAMETER_TEMPERATURE, "temperature", "\u00b0C", 1.0, false},
+    {WA_PARAMETER_LN_SOLUBILITY, "solubility", "mmol/L", 1e3, true},
     {WA_PARAMETER_EXCESS, "strong acid in excess", "mmol", 1e3, false},
 };
 

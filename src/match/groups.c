@@ -119,6 +119,13 @@ static enum wa_status mark_asked(const struct wa_table *table,
     return WA_OK;
 }
 
+bool wa_form_is_meant(const struct wa_table *table, int form, const char *name)
+{
+    return wa_table_find_form(table, name) == form ||
+           (wa_table_find_acid(table, name) >= 0 &&
+            wa_table_find_acid(table, name) == first_acid(&table->forms[form]));
+}
+
 static enum wa_status add_form(const struct wa_table *table, const struct wa_form *form,
                                struct wa_group *group, struct wa_error *error)
 {
@@ -128,48 +135,6 @@ static enum wa_status add_form(const struct wa_table *table, const struct wa_for
     }
     group->forms = larger;
     group->forms[group->form_count++] = (int)(form - table->forms);
-    return WA_OK;
-}
-
-/* Solubility of the uncharged species of the first acid system, where the table tells it: it is
- * what stays undissolved, or comes out when a salt is titrated back. */
-static void set_solubility(const struct wa_table *table, struct wa_group *group)
-{
-    group->solubility = INFINITY;
-    for (size_t f = 0; group->acid >= 0 && f < table->form_count; f++) {
-        const struct wa_form *form = &table->forms[f];
-        const struct wa_form_part *part = &form->parts[0];
-        if (form->part_count == 1 && part->acid == group->acid && part->count == 1 &&
-            part->lost == table->acids[group->acid].charge && isfinite(form->solubility_mol_L) &&
-            form->solubility_mol_L > 0.0) {
-            group->solubility = fmin(group->solubility, form->solubility_mol_L);
-            group->solid_species = part->lost;
-        }
-    }
-}
-
-/* Even over acid systems, then over the forms of one. */
-static enum wa_status set_priors(const struct wa_table *table, struct wa_group_list *list,
-                                 struct wa_error *error)
-{
-    /* Hydroxides alone count as one more system, at index acid_count. */
-    size_t *forms_of = calloc(table->acid_count + 1, sizeof *forms_of);
-    size_t systems = 0;
-    if (forms_of == NULL) {
-        return wa_fail_memory(error);
-    }
-    for (size_t g = 0; g < list->count; g++) {
-        const struct wa_group *group = &list->groups[g];
-        size_t *forms = &forms_of[group->acid >= 0 ? (size_t)group->acid : table->acid_count];
-        systems += *forms == 0 ? 1 : 0;
-        *forms += group->form_count;
-    }
-    for (size_t g = 0; g < list->count; g++) {
-        struct wa_group *group = &list->groups[g];
-        const size_t forms = forms_of[group->acid >= 0 ? (size_t)group->acid : table->acid_count];
-        group->log_prior = -log((double)systems) - log((double)forms);
-    }
-    free(forms_of);
     return WA_OK;
 }
 
@@ -188,8 +153,8 @@ static enum wa_status group_forms(const struct wa_table *table,
             }
             struct wa_group *group = &list->groups[list->count++];
             *group = (struct wa_group){.acid = first_acid(forms[i])};
-            set_solubility(table, group);
             wa_match_sample(table, forms[i], experiment, ionic_strength, ln_amount, &group->sample);
+            wa_group_solubility(table, experiment->temperature_C, group);
         }
         const enum wa_status status =
             add_form(table, forms[i], &list->groups[list->count - 1], error);
@@ -198,7 +163,7 @@ static enum wa_status group_forms(const struct wa_table *table,
         }
     }
     list->form_count = form_count;
-    return set_priors(table, list, error);
+    return WA_OK;
 }
 
 enum wa_status wa_groups_collect(const struct wa_table *table,
@@ -227,6 +192,9 @@ enum wa_status wa_groups_collect(const struct wa_table *table,
         status = group_forms(table, experiment, ionic_strength, ln_amount, forms, form_count, list,
                              error);
     }
+    if (status == WA_OK) {
+        status = wa_groups_priors(table, options, list, error);
+    }
     free(asked);
     free(forms);
     if (status != WA_OK) {
@@ -244,6 +212,8 @@ void wa_groups_free(struct wa_group_list *list)
             free(list->groups[g].fit);
         }
         free(list->groups);
+        free(list->form_prior);
+        free(list->form_observed);
         *list = (struct wa_group_list){.count = 0};
     }
 }

@@ -11,23 +11,29 @@
 
 static const double ln10 = 2.302585092994046;
 static const size_t most_points = 96; /* a longer run is thinned evenly: this is a screening */
-static const int rounds = 3;
-static const double model_error = 0.005; /* pH, so that no noiseless run screens too sharply */
+static const int rounds = 4;
+static const double settled = 0.05;      /* in prior u, and in per cent of the amount */
+static const double noise_trusted = 3.0; /* times its prior: beyond it the generic fit has failed */
+static const double weight_trusted = 0.75; /* of all points: fewer than that, and it has failed */
+static const double model_error = 0.005;   /* pH, so that no noiseless run screens too sharply */
 
-/* Unknowns of one form: its amount, the electrode's offset, and its free constants. */
-enum { AMOUNT, OFFSET, CONSTANTS };
+/* Unknowns of one form: its amount, the electrode, the titrant, and its free constants. */
+enum { AMOUNT, OFFSET, SLOPE, TITRANT, CARBONATE, EXCESS, CONSTANTS };
 
 #define UNKNOWNS_MAX (CONSTANTS + WA_PARTS_MAX * WA_PROTONS_MAX)
 
 /* One point: everything that does not depend on the form. */
 struct station {
+    double total_L;      /* volume in the vessel */
     double activity;     /* of H+, by the best generic fit's electrode */
     double gamma;        /* of a singly charged ion */
     double known;        /* mol of charge of all but the form: titrant, water, carbonate */
     double known_pH;     /* its derivative by pH */
+    double by_titrant;   /* by ln of the titrant's concentration */
+    double by_carbonate; /* by ln of the titrant's carbonate */
+    double lever;        /* of the electrode's slope: pH less its pivot */
     double noise_charge; /* mol, by the noise of the volume */
     double weight;       /* probability of being no outlier */
-    double total_L;      /* volume in the vessel */
 };
 
 struct screening {
@@ -35,8 +41,9 @@ struct screening {
     struct station *stations;
     size_t count;
     double noise_pH;
-    double slope;       /* of the electrode */
-    double offset_mean; /* prior mean less the offset already used */
+    double slope;          /* of the electrode */
+    double u[CONSTANTS];   /* prior u of what all forms share; 0: none */
+    double off[CONSTANTS]; /* prior mean less the value already used, in prior u */
 };
 
 /* One form on trial. */
@@ -78,9 +85,9 @@ static void set_station(const struct wa_titration *t, double pH, double gamma, d
 {
     const double total_L = t->solution_volume_L + added_L;
     double titrant_charge = t->titrant_charge;
+    at->total_L = total_L;
     at->activity = exp(-ln10 * pH);
     at->gamma = gamma;
-    at->total_L = total_L;
     const double hydrogen = t->medium.density * at->activity / gamma;
     const double hydroxide = t->medium.density * exp(ln10 * (pH - t->medium.pKw)) / gamma;
     at->known = (hydrogen - hydroxide) * total_L + t->titrant_charge * added_L;
@@ -95,9 +102,33 @@ static void set_station(const struct wa_titration *t, double pH, double gamma, d
         const double moles = component->sample_moles + component->titrant_concentration * added_L;
         at->known += moles * charge;
         at->known_pH -= ln10 * moles * variance;
+        at->by_carbonate = component->titrant_concentration * charge * added_L;
         titrant_charge += component->titrant_concentration * charge;
     }
+    at->by_titrant = titrant_charge * added_L;
     at->noise_charge = fabs(titrant_charge) * noise_L;
+}
+
+/* Let an unknown that all forms share vary about the value that the generic fit found. */
+static void share(const struct wa_fit *best, int unknown, enum wa_parameter_kind kind,
+                  struct screening *screening)
+{
+    const int index = wa_fit_find(best, kind, 0, 0);
+    if (index >= 0) {
+        const struct wa_parameter *parameter = &best->parameters[index];
+        screening->u[unknown] = parameter->prior.u;
+        screening->off[unknown] = (parameter->prior.mean - parameter->value) / parameter->prior.u;
+    }
+}
+
+/* Share of the points that the generic fit takes for no outliers. */
+static double share_within(const struct wa_experiment *experiment, const struct wa_fit *best)
+{
+    double sum = 0.0;
+    for (size_t p = 0; p < experiment->count; p++) {
+        sum += 1.0 - best->outlier[p];
+    }
+    return sum / (double)experiment->count;
 }
 
 static enum wa_status prepare(const struct wa_experiment *experiment, const struct wa_fit *best,
@@ -106,11 +137,20 @@ static enum wa_status prepare(const struct wa_experiment *experiment, const stru
     const struct wa_titration *t = &best->titration;
     const size_t stride = (experiment->count + most_points - 1) / most_points;
     const double offset = parameter_value(best, WA_PARAMETER_OFFSET, experiment->offset.mean);
-    screening->experiment = experiment;
-    screening->count = 0;
-    screening->noise_pH = hypot(best->noise_reading, model_error);
+    *screening = (struct screening){.experiment = experiment};
     screening->slope = parameter_value(best, WA_PARAMETER_SLOPE, experiment->slope.mean);
-    screening->offset_mean = experiment->offset.mean - offset;
+    share(best, OFFSET, WA_PARAMETER_OFFSET, screening);
+    share(best, SLOPE, WA_PARAMETER_SLOPE, screening);
+    share(best, TITRANT, WA_PARAMETER_LN_TITRANT, screening);
+    share(best, CARBONATE, WA_PARAMETER_LN_CARBONATE, screening);
+    share(best, EXCESS, WA_PARAMETER_EXCESS, screening);
+    const double excess = parameter_value(best, WA_PARAMETER_EXCESS, 0.0);
+    const double noise_reading =
+        fmin(best->noise_reading, noise_trusted * exp(experiment->ln_noise_reading.mean));
+    const double noise_volume =
+        fmin(best->noise_volume, noise_trusted * exp(experiment->ln_noise_volume.mean));
+    const bool trusted = share_within(experiment, best) > weight_trusted;
+    screening->noise_pH = hypot(noise_reading, model_error);
     screening->stations = calloc(experiment->count / stride + 1, sizeof *screening->stations);
     if (screening->stations == NULL) {
         return wa_fail_memory(error);
@@ -122,8 +162,10 @@ static enum wa_status prepare(const struct wa_experiment *experiment, const stru
     for (size_t p = 0; p < experiment->count; p += stride) {
         struct station *at = &screening->stations[screening->count++];
         const double pH = neutral + (experiment->reading[p] - neutral - offset) / screening->slope;
-        set_station(t, pH, gamma, 1e-3 * experiment->volume_mL[p], 1e-3 * best->noise_volume, at);
-        at->weight = 1.0 - best->outlier[p];
+        set_station(t, pH, gamma, 1e-3 * experiment->volume_mL[p], 1e-3 * noise_volume, at);
+        at->known -= excess;
+        at->lever = pH - neutral;
+        at->weight = trusted ? 1.0 - best->outlier[p] : 1.0;
     }
     return WA_OK;
 }
@@ -208,8 +250,7 @@ static void saturate(const struct trial *trial, const struct station *at, double
         return;
     }
     wa_system_fractions(&trial->systems[0], at->activity, at->gamma, fraction);
-    const double share = fraction[group->solid_species];
-    const double dissolved = group->solubility * at->total_L / share;
+    const double dissolved = group->solubility * at->total_L / fraction[group->solid_species];
     if (amount * part->count <= dissolved) {
         return;
     }
@@ -230,7 +271,6 @@ static void add_station(const struct screening *screening, const struct station 
     double by_pH, row[UNKNOWNS_MAX];
     const double amount = exp(trial->ln_amount);
     double charge = amount * form_charge(trial, at, &by_pH, &row[CONSTANTS]);
-    const double u_offset = screening->experiment->offset.u;
     by_pH *= amount;
     row[AMOUNT] = charge;
     for (int i = CONSTANTS; i < trial->count; i++) {
@@ -238,11 +278,16 @@ static void add_station(const struct screening *screening, const struct station 
     }
     saturate(trial, at, amount, &charge, &by_pH, row);
     const double total_pH = by_pH + at->known_pH;
-    row[OFFSET] = -total_pH / screening->slope * u_offset;
-    /* The offset acts linearly, the constants and the amount are in the charge already. */
-    const double residual =
-        charge + at->known +
-        row[OFFSET] * (trial->value[OFFSET] + screening->offset_mean / u_offset);
+    row[OFFSET] = -total_pH / screening->slope * screening->u[OFFSET];
+    row[SLOPE] = -total_pH * at->lever / screening->slope * screening->u[SLOPE];
+    row[TITRANT] = at->by_titrant * screening->u[TITRANT];
+    row[CARBONATE] = at->by_carbonate * screening->u[CARBONATE];
+    row[EXCESS] = -screening->u[EXCESS];
+    /* What all forms share acts linearly; the constants and the amount are in the charge. */
+    double residual = charge + at->known;
+    for (int i = OFFSET; i < CONSTANTS; i++) {
+        residual += row[i] * (trial->value[i] + screening->off[i]);
+    }
     const double sigma = hypot(total_pH * screening->noise_pH, at->noise_charge);
     const double weight = at->weight / (sigma * sigma);
     trial->square += weight * residual * residual;
@@ -280,7 +325,7 @@ static void linearise(const struct screening *screening, struct trial *trial)
 }
 
 /* Solve for the step and take it; returns ln of the determinant, or NaN. */
-static double step(struct trial *trial)
+static double step(struct trial *trial, double *move)
 {
     const size_t count = (size_t)trial->count;
     gsl_matrix_view matrix = gsl_matrix_view_array(trial->matrix, count, count);
@@ -294,8 +339,10 @@ static double step(struct trial *trial)
         log_determinant += 2.0 * log(trial->matrix[i * count + i]);
     }
     trial->ln_amount += fmin(fmax(trial->vector[AMOUNT], -1.0), 1.0);
+    *move = 100.0 * fabs(trial->vector[AMOUNT]);
     for (int i = OFFSET; i < trial->count; i++) {
         trial->value[i] += trial->vector[i];
+        *move = fmax(*move, fabs(trial->vector[i]));
     }
     return log_determinant;
 }
@@ -303,14 +350,14 @@ static double step(struct trial *trial)
 static double screen_group(const struct screening *screening, struct wa_group *group)
 {
     struct trial trial = {.group = group, .sample = &group->sample};
-    double log_determinant = NAN;
+    double log_determinant = NAN, move = INFINITY;
     set_systems(&trial);
     if (!first_amount(screening, &trial)) {
         return -INFINITY;
     }
-    for (int round = 0; round < rounds; round++) {
+    for (int round = 0; round < rounds && move > settled; round++) {
         linearise(screening, &trial);
-        log_determinant = step(&trial);
+        log_determinant = step(&trial, &move);
         if (!isfinite(log_determinant)) {
             return -INFINITY;
         }
@@ -319,9 +366,13 @@ static double screen_group(const struct screening *screening, struct wa_group *g
     /* A full fit would raise the noise to meet a misfit; this is what that costs. */
     const double excess = trial.square / trial.weight;
     double sum = trial.log_scale - 0.5 * trial.weight * (excess > 1.0 ? 1.0 + log(excess) : excess);
+    double strain = 0.0;
     for (int i = OFFSET; i < trial.count; i++) {
-        sum -= 0.5 * trial.value[i] * trial.value[i];
+        const double square = trial.value[i] * trial.value[i];
+        sum -= i < CONSTANTS ? 0.5 * square : 0.0;
+        strain += i < CONSTANTS ? 0.0 : square;
     }
+    sum += wa_log_strain(strain, trial.count - CONSTANTS);
     group->ln_amount = trial.ln_amount;
     sum -= 0.5 * log_determinant;
     return isfinite(sum) ? sum : -INFINITY;

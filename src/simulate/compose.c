@@ -111,32 +111,6 @@ static struct wa_titration_component *component_of(const struct wa_table *table,
     return component;
 }
 
-/* A table gives the solubility of the form with all its species; the solid is in equilibrium with
- * the uncharged species alone. */
-static enum wa_status set_solid(const struct wa_form *form, const struct wa_titration *titration,
-                                struct wa_titration_component *component, struct wa_error *error)
-{
-    struct wa_mixture water = {.medium = &titration->medium,
-                               .davies_coefficient = titration->davies_coefficient,
-                               .components = {{.system = &component->system,
-                                               .concentration = form->solubility_mol_L,
-                                               .solubility = INFINITY}},
-                               .component_count = 1};
-    struct wa_solution solution;
-    const enum wa_status status = wa_mixture_solve(&water, 7.0, &solution, NULL, error);
-    if (status == WA_OK) {
-        double fraction[WA_PROTONS_MAX + 1];
-        const double log10_gamma =
-            wa_davies_log10_gamma(solution.ionic_strength, titration->medium.debye_huckel_A,
-                                  titration->davies_coefficient);
-        wa_system_fractions(&component->system, pow(10.0, -solution.pH), pow(10.0, log10_gamma),
-                            fraction);
-        component->solid_species = form->parts[0].lost;
-        component->solubility = form->solubility_mol_L * fraction[component->solid_species];
-    }
-    return status;
-}
-
 static enum wa_status too_many(struct wa_error *error)
 {
     return wa_fail(error, WA_ERROR_CALL, NULL, 0,
@@ -162,7 +136,10 @@ static enum wa_status add_form(const struct wa_table *table, const struct wa_for
         }
         component->sample_moles += moles * part->count;
         if (!dissolved && is_plain(table, form) && isfinite(form->solubility_mol_L)) {
-            const enum wa_status status = set_solid(form, titration, component, error);
+            component->solid_species = part->lost;
+            const enum wa_status status = wa_species_solubility(
+                &component->system, &titration->medium, form->solubility_mol_L, part->lost,
+                &component->solubility, error);
             if (status != WA_OK) {
                 return status;
             }
