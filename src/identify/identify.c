@@ -182,6 +182,7 @@ static enum wa_status fill(struct wa_identification *work, struct wa_result *res
         wa_fill_protons,    wa_fill_equivalence, wa_fill_hydrogen_carbonate,
         wa_fill_candidates, wa_fill_findings,    wa_fill_mixture,
         wa_fill_verdict,    wa_fill_next_tests,  wa_fill_parameters,
+        wa_fill_traces,
     };
     enum wa_status status = WA_OK;
     for (size_t i = 0; status == WA_OK && i < sizeof steps / sizeof steps[0]; i++) {

@@ -76,4 +76,8 @@ enum wa_status wa_fill_next_tests(const struct wa_identification *work, struct w
 enum wa_status wa_fill_findings(const struct wa_identification *work, struct wa_result *result,
                                 struct wa_error *error) WA_MUST_USE;
 
+/** Curves of the best fit and of two candidates, for figures. After wa_fill_candidates. */
+enum wa_status wa_fill_traces(const struct wa_identification *work, struct wa_result *result,
+                              struct wa_error *error) WA_MUST_USE;
+
 #endif
