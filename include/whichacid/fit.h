@@ -133,7 +133,7 @@ struct wa_fit_options {
     int most_iterations; /**< 0: 60 */
     bool from_afar; /**< the start may be far off: begin with blunt weights and sharpen them, so
                        that the points of a jump are not taken for outliers where they stand */
-    double settled;      /**< converged when no step is longer, in posterior u; 0: 5e-3 */
+    double settled; /**< converged when no step is longer, in posterior u; 0: 5e-3 */
 };
 
 /**
