@@ -205,7 +205,8 @@ static inline bool case_precisions(const struct wa_experiment *experiment,
         const double wide = variance + WA_OUTLIER_SPREAD * WA_OUTLIER_SPREAD;
         double inlier = 1.0;
         if (outliers) {
-            wa_noise_log_likelihood(experiment->reading[p] - work[p].expected, variance, &inlier);
+            wa_noise_log_likelihood(WA_OUTLIER_FRACTION, experiment->reading[p] - work[p].expected,
+                                    variance, &inlier);
         }
         precision[p] = inlier / variance + (1.0 - inlier) / wide;
     }

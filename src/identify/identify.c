@@ -8,6 +8,9 @@
 #include <stdlib.h>
 #include <string.h>
 
+/* Most names that are fitted whatever their screening says. */
+#define WANTED_MAX 64
+
 static const double default_threshold = 0.95;
 static const double default_amount_limit = 0.05;
 static const double default_pKa_limit = 0.5;
@@ -118,6 +121,39 @@ static enum wa_status explain(struct wa_identification *work, struct wa_experime
     return status;
 }
 
+/* Names that are fitted whatever their screening says: those to be explained or compared. */
+static size_t collect_wanted(struct wa_identification *work, const char *wanted[WANTED_MAX])
+{
+    size_t count = 0;
+    if (work->options->explain != NULL) {
+        wanted[count++] = work->options->explain;
+    }
+    for (int side = 0; side < 2; side++) {
+        char *key = work->compared[side];
+        while (key != NULL && key[0] != '\0' && count < WANTED_MAX) {
+            char *comma = strchr(key, ',');
+            wanted[count++] = key;
+            if (comma != NULL) {
+                *comma = '\0';
+            }
+            key = comma != NULL ? comma + 1 : NULL;
+        }
+    }
+    return count;
+}
+
+static enum wa_status copy_compared(struct wa_identification *work, struct wa_error *error)
+{
+    for (int side = 0; side < 2; side++) {
+        const char *keys = work->options->compare[side];
+        work->compared[side] = keys != NULL ? strdup(keys) : NULL;
+        if (keys != NULL && work->compared[side] == NULL) {
+            return wa_fail_memory(error);
+        }
+    }
+    return WA_OK;
+}
+
 static enum wa_status compute(struct wa_identification *work, struct wa_result *result,
                               struct wa_error *error)
 {
@@ -127,9 +163,15 @@ static enum wa_status compute(struct wa_identification *work, struct wa_result *
         /* What is beside the acid weighs too: the mass says nothing of the acid's molar mass then.
          */
         work->mass.known = work->mass.known && !(result->experiments[0].excess_u > 0.0);
+        const char *wanted[WANTED_MAX];
         const struct wa_match_options options = {
             .among = work->options->among,
             .among_count = work->options->among_count,
+            .prior = work->options->prior,
+            .observed = work->options->observed,
+            .observed_count = work->options->observed_count,
+            .wanted = wanted,
+            .wanted_count = collect_wanted(work, wanted),
             .log_two_acids = work->explanations.log_two_acids,
         };
         status = wa_match_run(&result->experiments[0], &work->study, &work->mass, work->table,
@@ -145,8 +187,9 @@ static enum wa_status fill(struct wa_identification *work, struct wa_result *res
 {
     enum wa_status (*const steps[])(const struct wa_identification *, struct wa_result *,
                                     struct wa_error *) = {
-        wa_fill_protons, wa_fill_equivalence, wa_fill_candidates, wa_fill_findings,
-        wa_fill_mixture, wa_fill_verdict,     wa_fill_next_tests, wa_fill_parameters,
+        wa_fill_protons,  wa_fill_equivalence, wa_fill_candidates,  wa_fill_findings,
+        wa_fill_observed, wa_fill_comparison,  wa_fill_explanation, wa_fill_mixture,
+        wa_fill_verdict,  wa_fill_next_tests,  wa_fill_parameters,
     };
     enum wa_status status = WA_OK;
     for (size_t i = 0; status == WA_OK && i < sizeof steps / sizeof steps[0]; i++) {
@@ -184,12 +227,17 @@ enum wa_status wa_identify(struct wa_run_list *runs, const struct wa_table *tabl
                                                    : wa_fail(error, WA_ERROR_CALL, NULL, 0,
                                                              "There is no run to identify.");
     if (status == WA_OK) {
+        status = copy_compared(&work, error);
+    }
+    if (status == WA_OK) {
         status = compute(&work, result, error);
     }
     if (status == WA_OK) {
         status = fill(&work, result, error);
     }
     take_best(&work, result);
+    free(work.compared[0]);
+    free(work.compared[1]);
     wa_match_free(&work.match);
     wa_explanations_free(&work.explanations);
     wa_proton_study_free(&work.study);
