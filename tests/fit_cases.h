@@ -164,6 +164,29 @@ static inline bool case_readings(const struct wa_sample_model *sample,
     return true;
 }
 
+/** One run as the checks against other programs use it: noise levels held by narrow priors, so that
+ * the weights have nothing left to follow, and a poorly known volume, so that it is a parameter. */
+static inline bool case_example(const struct fit_case *c, size_t points, unsigned long seed,
+                                struct wa_experiment *experiment, struct wa_sample_model *sample,
+                                double *start)
+{
+    static const struct wa_noise noise = {.reading = 0.01, .volume = 0.008};
+    struct wa_parameter parameters[WA_PARAMETERS_MAX];
+    double truth[WA_PARAMETERS_MAX];
+    gsl_rng *random = gsl_rng_alloc(gsl_rng_mt19937);
+    gsl_rng_set(random, seed);
+    bool made = case_experiment(c, points, experiment);
+    experiment->ln_noise_reading = (struct wa_prior){.mean = log(noise.reading), .u = 1e-6};
+    experiment->ln_noise_volume = (struct wa_prior){.mean = log(noise.volume), .u = 1e-6};
+    experiment->ln_volume.u = 0.03;
+    wa_generic_sample(experiment, c->steps, c->lost, c->charge, sample);
+    const int count = case_truth(c, experiment, sample, random, parameters, truth);
+    made = made && case_readings(sample, parameters, truth, count, &noise, random, experiment);
+    case_start(parameters, truth, count, random, start);
+    gsl_rng_free(random);
+    return made;
+}
+
 /** Weights as the fit freezes them, at given values and noise; `work` has room for the points. */
 static inline bool case_precisions(const struct wa_experiment *experiment,
                                    const struct wa_sample_model *sample,
@@ -182,7 +205,8 @@ static inline bool case_precisions(const struct wa_experiment *experiment,
         const double wide = variance + WA_OUTLIER_SPREAD * WA_OUTLIER_SPREAD;
         double inlier = 1.0;
         if (outliers) {
-            wa_noise_log_likelihood(experiment->reading[p] - work[p].expected, variance, &inlier);
+            wa_noise_log_likelihood(WA_OUTLIER_FRACTION, experiment->reading[p] - work[p].expected,
+                                    variance, &inlier);
         }
         precision[p] = inlier / variance + (1.0 - inlier) / wide;
     }

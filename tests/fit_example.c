@@ -6,8 +6,6 @@
 
 #include <stdio.h>
 
-static const struct wa_noise example_noise = {.reading = 0.01, .volume = 0.008};
-
 static const char *kind_name(enum wa_parameter_kind kind)
 {
     static const char *const names[] = {
@@ -85,13 +83,6 @@ static int print_fit(const struct fit_case *c, const struct wa_experiment *exper
     return made ? 0 : 1;
 }
 
-/* Noise levels are held by narrow priors, so that the weights have nothing left to follow. */
-static void hold_noise(struct wa_experiment *experiment)
-{
-    experiment->ln_noise_reading = (struct wa_prior){.mean = log(example_noise.reading), .u = 1e-6};
-    experiment->ln_noise_volume = (struct wa_prior){.mean = log(example_noise.volume), .u = 1e-6};
-}
-
 int main(int argument_count, char **arguments)
 {
     const struct fit_case *c = NULL;
@@ -104,30 +95,19 @@ int main(int argument_count, char **arguments)
     }
     struct wa_experiment experiment;
     struct wa_sample_model sample;
-    struct wa_parameter parameters[WA_PARAMETERS_MAX];
-    double truth[WA_PARAMETERS_MAX], start[WA_PARAMETERS_MAX];
+    double start[WA_PARAMETERS_MAX];
     struct wa_fit fit = {.parameter_count = 0};
     struct wa_error error;
-    gsl_rng *random = gsl_rng_alloc(gsl_rng_mt19937);
-    gsl_rng_set(random, strtoul(arguments[3], NULL, 10));
-    bool made = case_experiment(c, strtoul(arguments[2], NULL, 10), &experiment);
-    hold_noise(&experiment);
-    /* Here the volume is poorly known, so that it is a parameter too. */
-    experiment.ln_volume.u = 0.03;
-    wa_generic_sample(&experiment, c->steps, c->lost, c->charge, &sample);
-    const int count = case_truth(c, &experiment, &sample, random, parameters, truth);
-    made = made &&
-           case_readings(&sample, parameters, truth, count, &example_noise, random, &experiment);
-    if (argument_count > 4) {
+    bool made = case_example(c, strtoul(arguments[2], NULL, 10), strtoul(arguments[3], NULL, 10),
+                             &experiment, &sample, start);
+    if (made && argument_count > 4) {
         experiment.reading[strtoul(arguments[4], NULL, 10)] += 0.7;
     }
     const struct wa_fit_options options = {
         .most_iterations = 500, .settled = 1e-10, .from_afar = true};
-    case_start(parameters, truth, count, random, start);
     made = made && wa_fit_run(&experiment, &sample, &options, start, &fit, &error) == WA_OK;
     const int status = made ? print_fit(c, &experiment, &sample, start, &fit) : 1;
     wa_fit_free(&fit);
     wa_experiment_free(&experiment);
-    gsl_rng_free(random);
     return status;
 }

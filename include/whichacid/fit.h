@@ -47,6 +47,7 @@ struct wa_experiment {
     struct wa_prior ln_noise_reading;  /**< ln of the standard deviation of a pH reading */
     struct wa_prior ln_noise_volume;   /**< ln of the standard deviation of a volume in mL */
     double background;                 /**< mol/L of 1:1 electrolyte in the sample */
+    double outlier_share;              /**< of the rows before the data; 0: the stated default */
     double excess_u; /**< prior u of strong acid (or, negative, base) in the sample, mol; 0: none */
     double equivalents;    /**< protons that a mole of titrant takes or gives, positive */
     double titrant_charge; /**< spectator charge a mole of titrant brings: +1 NaOH, -1 HCl */

@@ -2,9 +2,11 @@
 #ifndef WHICHACID_IDENTIFY_H
 #define WHICHACID_IDENTIFY_H
 
+#include "whichacid/observation.h"
 #include "whichacid/reader.h"
 #include "whichacid/reference.h"
 #include "whichacid/result.h"
+#include "whichacid/weights.h"
 
 /** What the caller may set. Zero-initialised means the defaults. */
 struct wa_identify_options {
@@ -13,7 +15,12 @@ struct wa_identify_options {
     double pKa_limit;         /**< u(pKa) beyond which a constant says nothing; 0: 0.5 */
     const char *const *among; /**< closed set of keys, NULL: the whole table */
     size_t among_count;
-    const char *explain; /**< key of a form whose absence is to be explained, or NULL */
+    const struct wa_weight_list *prior;    /**< what the laboratory expects, or NULL */
+    const char *prior_file;                /**< its name, for the report */
+    const struct wa_observation *observed; /**< what was observed besides the titration */
+    size_t observed_count;
+    const char *compare[2]; /**< keys with commas between, the second may be "rest"; NULL: none */
+    const char *explain;    /**< key of a form whose absence is to be explained, or NULL */
 };
 
 /**

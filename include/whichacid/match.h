@@ -30,6 +30,13 @@
 #define WA_PURITY_REAGENT_LN_U 0.004
 #define WA_PURITY_FOUND_LN_S 0.08
 
+/** Share of the acids whose row in the table is wrong by more than it admits, and what their
+ * constants' uncertainties are then taken for: this many times wider, and at least this wide.
+ * Handbooks contradict one another about that often (common practice). */
+#define WA_ROW_WRONG_SHARE 0.05
+#define WA_ROW_WRONG_WIDER 4.0
+#define WA_ROW_WRONG_LEAST_U 0.1
+
 /** The mass that was titrated. */
 struct wa_titrated_mass {
     bool known;
@@ -103,6 +110,35 @@ enum wa_status wa_match_run(const struct wa_experiment *experiment,
                             const struct wa_titrated_mass *mass, const struct wa_table *table,
                             const struct wa_match_options *options, struct wa_match *match,
                             struct wa_error *error) WA_MUST_USE;
+
+/** One assumption varied, and where it takes the evidence ratio. */
+struct wa_comparison_range {
+    const char *assumption;
+    double low, high; /**< lg of the ratio */
+};
+
+/** Evidence for one set of forms against another. */
+struct wa_comparison {
+    double log10_ratio;
+    double log10_low, log10_high; /**< as the assumptions below are varied one at a time, together
+                                       as the root of the sum of squares */
+    struct wa_comparison_range ranges[3];
+};
+
+/**
+ * The ratio of the evidence for two sets: each set's evidence is the mean over its forms by their
+ * prior weights, so that the ratio does not depend on how probable the sets were before. Purity,
+ * electrode and the share of outliers are varied.
+ * @param[in] first   keys, commas between
+ * @param[in] second  the same, or "rest": every other form, and what the table lacks
+ * @return WA_ERROR_CALL for an unknown key, or when a set is empty or a form is in both
+ */
+enum wa_status wa_match_compare(const struct wa_experiment *experiment,
+                                const struct wa_proton_study *study,
+                                const struct wa_titrated_mass *mass, const struct wa_table *table,
+                                const struct wa_match *match, const char *first, const char *second,
+                                struct wa_comparison *comparison,
+                                struct wa_error *error) WA_MUST_USE;
 
 /** Free what a match owns. NULL is allowed. */
 void wa_match_free(struct wa_match *match);

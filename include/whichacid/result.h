@@ -93,7 +93,20 @@ struct wa_result_sentence {
 /** A next observation and what it would separate. */
 struct wa_result_next {
     char *sentence;
-    char *separates; /**< keys, "; " between */
+    char *separates;      /**< keys, "; " between */
+    double expected_bits; /**< expected drop of the entropy over the forms; NaN: not computed */
+    double expected_set;  /**< expected number of forms in the 95 % set after it; NaN likewise */
+};
+
+/** Evidence for one proposition against another (--compare). */
+struct wa_result_comparison {
+    bool given;
+    char *first, *second; /**< as asked for */
+    double log10_ratio;   /**< evidence for the first over the second */
+    double log10_low, log10_high;
+    const char *support; /**< the verbal scale's words, for the end of the range nearer to 1 */
+    char *sentence;
+    char *sensitivity; /**< what each assumption does to it */
 };
 
 enum wa_verdict_kind {
@@ -154,6 +167,13 @@ struct wa_result {
     size_t assumption_count;
     struct wa_result_sentence *cautions;
     size_t caution_count;
+    struct wa_result_sentence *observed; /**< observations besides the titration */
+    size_t observed_count;
+    struct wa_result_comparison comparison;
+    char *explained; /**< key asked for with --explain, or NULL */
+    struct wa_result_sentence *explanation;
+    size_t explanation_count;
+    double missing_bits; /**< entropy over the forms; NaN when nothing was matched */
     struct wa_result_next *next_tests;
     size_t next_test_count;
     char table_version[17];

@@ -13,6 +13,9 @@ enum {
     key_table = 0x100,
     key_also,
     key_among,
+    key_prior,
+    key_observed,
+    key_compare,
     key_threshold,
     key_explain,
     key_each,
@@ -44,8 +47,24 @@ static const struct argp_option own_options[] = {
      .group = 3},
     {.name = "among",
      .key = key_among,
-     .arg = "KEY,...",
-     .doc = "compare these acids or forms only; may be repeated",
+     .arg = "KEY,...|FILE",
+     .doc = "compare these acids or forms only, or those that a file lists; may be repeated",
+     .group = 3},
+    {.name = "prior",
+     .key = key_prior,
+     .arg = "FILE",
+     .doc = "rows key,weight: how often the laboratory meets each acid or form",
+     .group = 3},
+    {.name = "observed",
+     .key = key_observed,
+     .arg = "WHAT",
+     .doc = "a further observation, as \"melting point: 122 ± 1 °C\", \"loss on drying: "
+            "8.5 ± 0.2 %\" or \"chloride: yes\"; may be repeated",
+     .group = 3},
+    {.name = "compare",
+     .key = key_compare,
+     .arg = "KEY,... KEY,...",
+     .doc = "the evidence for the first against the second, which may be the word rest",
      .group = 3},
     {.name = "threshold",
      .key = key_threshold,
@@ -138,6 +157,20 @@ static error_t parse(int key, char *argument, struct argp_state *state)
     case key_among:
         request->among[request->among_count++] = argument;
         return 0;
+    case key_prior:
+        request->prior = argument;
+        return 0;
+    case key_observed:
+        request->observed[request->observed_count++] = argument;
+        return 0;
+    case key_compare:
+        if (state->next >= state->argc) {
+            argp_error(state, "--compare needs two names, as --compare citric-acid rest");
+            return EINVAL;
+        }
+        request->compare[0] = argument;
+        request->compare[1] = state->argv[state->next++];
+        return 0;
     case key_threshold:
         request->threshold = argument;
         return 0;
@@ -223,7 +256,7 @@ int command_identify(int argument_count, char **arguments)
         return command_report_error(&error);
     }
     size_t most = (size_t)argument_count + 1;
-    const char **lists = calloc(3 * most, sizeof *lists);
+    const char **lists = calloc(4 * most, sizeof *lists);
     int result;
     if (lists == NULL) {
         wa_fail_memory(&error);
@@ -233,7 +266,8 @@ int command_identify(int argument_count, char **arguments)
                                            .table = WHICHACID_REFERENCE_DIR,
                                            .paths = lists,
                                            .also = lists + most,
-                                           .among = lists + 2 * most};
+                                           .among = lists + 2 * most,
+                                           .observed = lists + 3 * most};
         result = parse_and_answer(argument_count, arguments, &request);
     }
     free(lists);

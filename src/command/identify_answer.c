@@ -28,6 +28,8 @@ struct work {
     char **among; /* single names, owned */
     size_t among_count;
     size_t among_capacity;
+    struct wa_weight_list prior;
+    struct wa_observation *observed;
     struct input *inputs; /* as many as files */
     struct wa_report_options report;
     enum wa_figure_kind figure_kind;
@@ -80,6 +82,72 @@ static enum wa_status split_among(struct work *work, const char *text, struct wa
     return status;
 }
 
+/* A name of the table, names with commas between, or a file that lists names. */
+static enum wa_status take_among(struct work *work, const char *text, struct wa_error *error)
+{
+    struct wa_weight_list list;
+    if (is_in_table(&work->table, text) || access(text, R_OK) != 0) {
+        return split_among(work, text, error);
+    }
+    enum wa_status status = wa_weights_load(text, &work->table, &list, error);
+    if (status != WA_OK) {
+        return status;
+    }
+    for (size_t i = 0; status == WA_OK && i < list.count; i++) {
+        status = add_among(work, list.weights[i].key, strlen(list.weights[i].key), error);
+    }
+    wa_weights_free(&list);
+    return status;
+}
+
+/* The laboratory's weights, and what was observed besides. */
+static enum wa_status take_evidence(struct work *work, struct wa_error *error)
+{
+    const struct identify_request *request = work->request;
+    enum wa_status status = WA_OK;
+    if (request->prior != NULL) {
+        status = wa_weights_load(request->prior, &work->table, &work->prior, error);
+        work->options.prior = &work->prior;
+        work->options.prior_file = request->prior;
+    }
+    work->observed = calloc(request->observed_count + 1, sizeof *work->observed);
+    if (work->observed == NULL) {
+        return wa_fail_memory(error);
+    }
+    for (size_t i = 0; status == WA_OK && i < request->observed_count; i++) {
+        status = wa_observation_parse(request->observed[i], &work->observed[i], error);
+    }
+    work->options.observed = work->observed;
+    work->options.observed_count = request->observed_count;
+    work->options.compare[0] = request->compare[0];
+    work->options.compare[1] = request->compare[1];
+    return status;
+}
+
+/* Names of a comparison, told before any work is done. */
+static enum wa_status check_compared(const struct work *work, struct wa_error *error)
+{
+    for (int side = 0; side < 2; side++) {
+        const char *at = work->request->compare[side];
+        const bool rest = at != NULL && side == 1 && strcmp(at, WA_WEIGHT_REST) == 0;
+        while (at != NULL && !rest && *at != '\0') {
+            const size_t length = strcspn(at, ",");
+            char *name = wa_text_copy(at, length);
+            if (name == NULL) {
+                return wa_fail_memory(error);
+            }
+            const bool known = is_in_table(&work->table, name);
+            const enum wa_status status = known ? WA_OK : fail_unknown("--compare", name, error);
+            free(name);
+            if (!known) {
+                return status;
+            }
+            at += length + (at[length] == ',' ? 1 : 0);
+        }
+    }
+    return WA_OK;
+}
+
 static enum wa_status parse_threshold(const char *text, double *threshold, struct wa_error *error)
 {
     struct wa_quantity share;
@@ -124,7 +192,13 @@ static enum wa_status prepare(struct work *work, struct wa_error *error)
         status = parse_threshold(request->threshold, &work->options.threshold, error);
     }
     for (size_t i = 0; i < request->among_count && status == WA_OK; i++) {
-        status = split_among(work, request->among[i], error);
+        status = take_among(work, request->among[i], error);
+    }
+    if (status == WA_OK) {
+        status = take_evidence(work, error);
+    }
+    if (status == WA_OK) {
+        status = check_compared(work, error);
     }
     if (status == WA_OK && request->explain != NULL &&
         !is_in_table(&work->table, request->explain)) {
@@ -307,6 +381,8 @@ int identify_answer(const struct identify_request *request, struct wa_text *answ
     }
     free(work.among);
     free(work.inputs);
+    free(work.observed);
+    wa_weights_free(&work.prior);
     wa_table_free(&work.table);
     return result;
 }

@@ -18,6 +18,10 @@ struct identify_request {
     size_t also_count;
     const char **among; /**< as given: names, or several with commas between */
     size_t among_count;
+    const char *prior;     /**< file, or NULL */
+    const char **observed; /**< as given */
+    size_t observed_count;
+    const char *compare[2]; /**< names with commas between, or NULL */
     const char *explain;
     const char *threshold;
     const char *output;

@@ -160,8 +160,9 @@ static double gain_at(const struct wa_inquiry *inquiry, size_t row, double shift
             return -INFINITY;
         }
         double inlier;
-        const double likelihood = wa_noise_log_likelihood(
-            e->reading[row] - point.expected, wa_noise_variance(&noise, &point), &inlier);
+        const double likelihood =
+            wa_noise_log_likelihood(wa_outlier_share(e), e->reading[row] - point.expected,
+                                    wa_noise_variance(&noise, &point), &inlier);
         sum += altered == 1 ? likelihood : -likelihood;
     }
     return sum;

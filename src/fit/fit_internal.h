@@ -57,8 +57,12 @@ enum wa_status wa_model_evaluate(const struct wa_experiment *experiment,
 /** Variance of one reading under the noise levels, volume error carried through the slope. */
 double wa_noise_variance(const struct wa_noise *noise, const struct wa_point_model *point);
 
+/** Share of outliers before the data. */
+double wa_outlier_share(const struct wa_experiment *experiment);
+
 /** ln of the likelihood of one residual, and the probability that it is no outlier. */
-double wa_noise_log_likelihood(double residual, double variance, double *inlier);
+double wa_noise_log_likelihood(double outlier_share, double residual, double variance,
+                               double *inlier);
 
 /**
  * One round of Fisher scoring for the noise levels, given expected squared residuals.

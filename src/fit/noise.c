@@ -19,12 +19,18 @@ double wa_noise_variance(const struct wa_noise *noise, const struct wa_point_mod
     return noise->reading * noise->reading + extreme * extreme + by_volume * by_volume;
 }
 
-double wa_noise_log_likelihood(double residual, double variance, double *inlier)
+double wa_outlier_share(const struct wa_experiment *experiment)
+{
+    return experiment->outlier_share > 0.0 ? experiment->outlier_share : WA_OUTLIER_FRACTION;
+}
+
+double wa_noise_log_likelihood(double outlier_share, double residual, double variance,
+                               double *inlier)
 {
     const double wide = variance + WA_OUTLIER_SPREAD * WA_OUTLIER_SPREAD;
     const double square = residual * residual;
-    const double usual = log(1.0 - WA_OUTLIER_FRACTION) - 0.5 * (log(variance) + square / variance);
-    const double odd = log(WA_OUTLIER_FRACTION) - 0.5 * (log(wide) + square / wide);
+    const double usual = log(1.0 - outlier_share) - 0.5 * (log(variance) + square / variance);
+    const double odd = log(outlier_share) - 0.5 * (log(wide) + square / wide);
     const double high = fmax(usual, odd);
     const double sum = high + log1p(exp(fmin(usual, odd) - high));
     *inlier = exp(usual - sum);

@@ -109,13 +109,14 @@ static int evaluate(struct work *work, const gsl_vector *deviation)
 /* Freeze the weights at the current parameters; returns the log likelihood. */
 static double weigh(struct work *work)
 {
+    const double outlier_share = wa_outlier_share(work->experiment);
     double sum = 0.0;
     for (size_t p = 0; p < work->experiment->count; p++) {
         const double residual = work->experiment->reading[p] - work->points[p].expected;
         const double variance =
             wa_noise_variance(&work->noise, &work->points[p]) * work->bluntness * work->bluntness;
         const double wide = variance + WA_OUTLIER_SPREAD * WA_OUTLIER_SPREAD;
-        sum += wa_noise_log_likelihood(residual, variance, &work->inlier[p]);
+        sum += wa_noise_log_likelihood(outlier_share, residual, variance, &work->inlier[p]);
         work->precision[p] = work->inlier[p] / variance + (1.0 - work->inlier[p]) / wide;
         work->square[p] = residual * residual;
     }

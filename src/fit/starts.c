@@ -19,7 +19,8 @@ static double score(const struct wa_experiment *experiment, const struct wa_poin
     double sum = 0.0;
     for (size_t p = 0; p < experiment->count; p++) {
         double inlier;
-        sum += wa_noise_log_likelihood(experiment->reading[p] - points[p].expected,
+        sum += wa_noise_log_likelihood(wa_outlier_share(experiment),
+                                       experiment->reading[p] - points[p].expected,
                                        wa_noise_variance(&blunt, &points[p]), &inlier);
     }
     return sum;

@@ -9,6 +9,8 @@
 
 static const double least_listed = 1e-3; /* probability below which only the first few are listed */
 static const size_t listed_at_least = 5;
+static const double misses_from = 2.0;     /* combined u */
+static const double excused_purity = 0.85; /* beyond two scales of "as found" */
 
 static bool has_source(const struct wa_text *list, const char *source)
 {
@@ -56,19 +58,22 @@ static bool within_window(const struct wa_experiment *experiment, double pKa)
     return pKa > lowest - 1.0 && pKa < highest + 0.3;
 }
 
-/* What the curve alone says of a constant, less the table's value, in the uncertainty of both; NaN
- * when it says next to nothing. The fit's prior is taken out of its posterior, and it may have been
- * wider than the table's. */
-static double pull(const struct wa_parameter *parameter, double table_u)
+double wa_constant_deviation(const struct wa_parameter *parameter, double table_u, double *alone,
+                             double *alone_u)
 {
+    /* The fit's prior is taken out of its posterior; it may have been wider than the table's. */
     const double prior = 1.0 / (parameter->prior.u * parameter->prior.u);
     const double gained = 1.0 / (parameter->u * parameter->u) - prior;
     if (!(gained > 0.02 * prior)) {
         return NAN;
     }
-    const double alone = parameter->prior.mean +
-                         (parameter->value - parameter->prior.mean) * (gained + prior) / gained;
-    return (alone - parameter->prior.mean) / sqrt(1.0 / gained + table_u * table_u);
+    const double difference =
+        (parameter->value - parameter->prior.mean) * (gained + prior) / gained;
+    if (alone != NULL && alone_u != NULL) {
+        *alone = parameter->prior.mean + difference;
+        *alone_u = 1.0 / sqrt(gained);
+    }
+    return difference / sqrt(1.0 / gained + table_u * table_u);
 }
 
 static void fill_constants(const struct wa_table *table, const struct wa_candidate *candidate,
@@ -89,44 +94,82 @@ static void fill_constants(const struct wa_table *table, const struct wa_candida
         listed->seen[i] = within_window(experiment, acid->steps[i].pKa);
         listed->pKa_deviation[i] =
             index >= 0 && listed->seen[i]
-                ? pull(&candidate->fit->parameters[index], candidate->sample->parts[part].pK_u[i])
+                ? wa_constant_deviation(&candidate->fit->parameters[index],
+                                        candidate->sample->parts[part].pK_u[i], NULL, NULL)
                 : NAN;
     }
 }
 
-/* One line that a chemist can check. */
-static char *reasons(const struct wa_result_candidate *listed, const struct wa_candidate *candidate)
+/* Which constants fit and which miss, each by how much. */
+static void append_constants(const struct wa_result_candidate *listed,
+                             const struct wa_candidate *candidate, struct wa_text *text)
 {
-    struct wa_text text = {.bytes = NULL};
-    int seen = 0;
-    double worst = 0.0;
-    int worst_step = 0;
+    int seen = 0, missing = 0;
     for (int i = 0; i < listed->step_count; i++) {
-        if (listed->seen[i] && isfinite(listed->pKa_deviation[i])) {
-            seen++;
-            if (fabs(listed->pKa_deviation[i]) > fabs(worst)) {
-                worst = listed->pKa_deviation[i];
-                worst_step = i + 1;
-            }
+        const double off = listed->pKa_deviation[i];
+        if (!listed->seen[i] || !isfinite(off)) {
+            continue;
         }
+        if (fabs(off) >= misses_from) {
+            wa_text_append(text, "%spKa%d misses by %+.1f u", missing > 0 ? ", " : "", i + 1, off);
+            missing++;
+        }
+        seen++;
     }
     if (seen == 0) {
-        wa_text_append(&text, "the curve says nothing about its constants");
-    } else if (fabs(worst) < 2.0) {
-        wa_text_append(&text, "%s", seen == 1 ? "its constant fits" : "its constants fit");
+        wa_text_append(text, "the curve says nothing about its constants");
+    } else if (missing == 0) {
+        wa_text_append(text, "%s", seen == 1 ? "its constant fits" : "its constants fit");
+    } else if (seen > missing) {
+        wa_text_append(text, ", the other%s fit%s", seen - missing > 1 ? "s" : "",
+                       seen - missing > 1 ? "" : "s");
+    }
+    if (candidate->row_doubted) {
+        wa_text_append(text, " (only with the table's uncertainties widened)");
+    }
+}
+
+/* What the mass says: a molar mass that is too high is excused by an impurity, up to a point. */
+static void append_mass(const struct wa_titrated_mass *mass, const struct wa_candidate *candidate,
+                        const struct wa_result_candidate *listed, struct wa_text *text)
+{
+    if (!mass->known) {
+        return;
+    }
+    const double measured = mass->mass_g / exp(candidate->ln_amount);
+    const double purity = listed->molar_mass / measured;
+    const double off = listed->molar_mass_deviation;
+    if (fabs(off) < misses_from) {
+        wa_text_append(text, "; molar mass fits by %+.1f u", off);
+    } else if (off > 0.0 && purity > excused_purity) {
+        wa_text_append(text, "; molar mass fits a purity of %.1f %%", 100.0 * purity);
+    } else if (off > 0.0) {
+        wa_text_append(text, "; molar mass misses by %+.1f u: only %.0f %% would be the substance",
+                       off, 100.0 * purity);
     } else {
-        wa_text_append(&text, "pKa%d misses by %+.1f u", worst_step, worst);
+        wa_text_append(text,
+                       "; molar mass misses by %+.1f u, and no impurity of other substances "
+                       "makes it too low",
+                       off);
     }
-    if (isfinite(listed->molar_mass_deviation)) {
-        wa_text_append(&text, "; molar mass %s by %+.1f u",
-                       fabs(listed->molar_mass_deviation) < 2.0 ? "fits" : "misses",
-                       listed->molar_mass_deviation);
-    }
+}
+
+/* One line that a chemist can check. */
+static char *reasons(const struct wa_titrated_mass *mass, const struct wa_result_candidate *listed,
+                     const struct wa_candidate *candidate)
+{
+    struct wa_text text = {.bytes = NULL};
+    append_constants(listed, candidate, &text);
+    append_mass(mass, candidate, listed, &text);
     if (candidate->fit->misfit > 1.3) {
         wa_text_append(&text, "; the curve scatters about it %.1f times its noise",
                        candidate->fit->misfit);
     }
-    return text.failed ? NULL : text.bytes;
+    if (text.failed) {
+        wa_text_free(&text);
+        return NULL;
+    }
+    return text.bytes;
 }
 
 static char *copy_text(const char *text)
@@ -173,7 +216,7 @@ static enum wa_status list_candidate(const struct wa_identification *work,
     listed->key = copy_text(form->key);
     listed->others = take(&others);
     listed->sources = take(&sources);
-    listed->why = reasons(listed, candidate);
+    listed->why = reasons(&work->mass, listed, candidate);
     return listed->acid_name != NULL && listed->form_name != NULL && listed->key != NULL &&
                    listed->others != NULL && listed->sources != NULL && listed->why != NULL
                ? WA_OK

@@ -8,6 +8,9 @@
 #include <stdlib.h>
 #include <string.h>
 
+/* Most names that are fitted whatever their screening says. */
+#define WANTED_MAX 64
+
 static const double default_threshold = 0.95;
 static const double default_amount_limit = 0.05;
 static const double default_pKa_limit = 0.5;
@@ -119,12 +122,50 @@ static enum wa_status explain(struct wa_identification *work, struct wa_experime
     return status;
 }
 
+/* Names that are fitted whatever their screening says: those to be explained or compared. */
+static size_t collect_wanted(struct wa_identification *work, const char *wanted[WANTED_MAX])
+{
+    size_t count = 0;
+    if (work->options->explain != NULL) {
+        wanted[count++] = work->options->explain;
+    }
+    for (int side = 0; side < 2; side++) {
+        char *key = work->compared[side];
+        while (key != NULL && key[0] != '\0' && count < WANTED_MAX) {
+            char *comma = strchr(key, ',');
+            wanted[count++] = key;
+            if (comma != NULL) {
+                *comma = '\0';
+            }
+            key = comma != NULL ? comma + 1 : NULL;
+        }
+    }
+    return count;
+}
+
+static enum wa_status copy_compared(struct wa_identification *work, struct wa_error *error)
+{
+    for (int side = 0; side < 2; side++) {
+        const char *keys = work->options->compare[side];
+        work->compared[side] = keys != NULL ? strdup(keys) : NULL;
+        if (keys != NULL && work->compared[side] == NULL) {
+            return wa_fail_memory(error);
+        }
+    }
+    return WA_OK;
+}
+
 static enum wa_status match(struct wa_identification *work, const struct wa_experiment *experiment,
-                            struct wa_error *error)
+                            const char *const *wanted, size_t wanted_count, struct wa_error *error)
 {
     const struct wa_match_options options = {
         .among = work->options->among,
         .among_count = work->options->among_count,
+        .prior = work->options->prior,
+        .observed = work->options->observed,
+        .observed_count = work->options->observed_count,
+        .wanted = wanted,
+        .wanted_count = wanted_count,
         .log_two_acids = work->explanations.log_two_acids,
     };
     const enum wa_status status = wa_match_run(experiment, &work->study, &work->mass, work->table,
@@ -133,24 +174,13 @@ static enum wa_status match(struct wa_identification *work, const struct wa_expe
     return status;
 }
 
-/* When a substance of the table describes the curve far better than every generic acid, the search
- * for the latter has missed: it is taken up from there, and the match done again. */
-static enum wa_status reconsider(struct wa_identification *work,
-                                 const struct wa_experiment *experiment, struct wa_error *error)
+/* Whether a substance of the table describes the curve far better than every generic acid: the
+ * search for the latter has then missed. */
+static bool search_has_missed(const struct wa_identification *work)
 {
-    const struct wa_candidate *best =
-        work->match.candidate_count > 0 ? &work->match.candidates[0] : NULL;
-    if (best == NULL || best->log_curve < work->study.generic[0].fit.log_evidence + search_missed) {
-        return WA_OK;
-    }
-    enum wa_status status =
-        wa_proton_study_seed(experiment, best->sample, best->fit, &work->study, error);
-    if (status == WA_OK) {
-        wa_match_free(&work->match);
-        work->matched = false;
-        status = match(work, experiment, error);
-    }
-    return status;
+    return work->match.candidate_count > 0 &&
+           work->match.candidates[0].log_curve >
+               work->study.generic[0].fit.log_evidence + search_missed;
 }
 
 static enum wa_status compute(struct wa_identification *work, struct wa_result *result,
@@ -164,9 +194,17 @@ static enum wa_status compute(struct wa_identification *work, struct wa_result *
     }
     /* What is beside the acid weighs too: the mass says nothing of the acid's molar mass then. */
     work->mass.known = work->mass.known && !(experiment->excess_u > 0.0);
-    status = match(work, experiment, error);
-    if (status == WA_OK) {
-        status = reconsider(work, experiment, error);
+    const char *wanted[WANTED_MAX];
+    const size_t wanted_count = collect_wanted(work, wanted);
+    status = match(work, experiment, wanted, wanted_count, error);
+    if (status == WA_OK && search_has_missed(work)) {
+        /* The search is taken up from that substance, and the match done again. */
+        const struct wa_candidate *best = &work->match.candidates[0];
+        status = wa_proton_study_seed(experiment, best->sample, best->fit, &work->study, error);
+        if (status == WA_OK) {
+            wa_match_free(&work->match);
+            status = match(work, experiment, wanted, wanted_count, error);
+        }
     }
     if (status == WA_OK) {
         weigh_charges(work);
@@ -179,9 +217,9 @@ static enum wa_status fill(struct wa_identification *work, struct wa_result *res
 {
     enum wa_status (*const steps[])(const struct wa_identification *, struct wa_result *,
                                     struct wa_error *) = {
-        wa_fill_protons,    wa_fill_equivalence, wa_fill_hydrogen_carbonate,
-        wa_fill_candidates, wa_fill_findings,    wa_fill_mixture,
-        wa_fill_verdict,    wa_fill_next_tests,  wa_fill_parameters,
+        wa_fill_protons,  wa_fill_equivalence, wa_fill_hydrogen_carbonate, wa_fill_candidates,
+        wa_fill_findings, wa_fill_observed,    wa_fill_comparison,         wa_fill_explanation,
+        wa_fill_mixture,  wa_fill_verdict,     wa_fill_next_tests,         wa_fill_parameters,
         wa_fill_traces,
     };
     enum wa_status status = WA_OK;
@@ -220,12 +258,17 @@ enum wa_status wa_identify(struct wa_run_list *runs, const struct wa_table *tabl
                                                    : wa_fail(error, WA_ERROR_CALL, NULL, 0,
                                                              "There is no run to identify.");
     if (status == WA_OK) {
+        status = copy_compared(&work, error);
+    }
+    if (status == WA_OK) {
         status = compute(&work, result, error);
     }
     if (status == WA_OK) {
         status = fill(&work, result, error);
     }
     take_best(&work, result);
+    free(work.compared[0]);
+    free(work.compared[1]);
     wa_match_free(&work.match);
     wa_explanations_free(&work.explanations);
     wa_proton_study_free(&work.study);

@@ -21,6 +21,7 @@ struct wa_identification {
     struct wa_proton_study study; /**< of the first run */
     struct wa_explanations explanations;
     struct wa_match match;
+    char *compared[2]; /**< names of a comparison, cut at their commas */
     bool matched;
     double charge_weight[WA_START_CHARGES]; /**< share of the candidates by start charge */
 };
@@ -71,6 +72,19 @@ enum wa_status wa_fill_verdict(const struct wa_identification *work, struct wa_r
 /** What to do next. */
 enum wa_status wa_fill_next_tests(const struct wa_identification *work, struct wa_result *result,
                                   struct wa_error *error) WA_MUST_USE;
+
+/** Observations besides the titration, the comparison and the explanation asked for. */
+enum wa_status wa_fill_observed(const struct wa_identification *work, struct wa_result *result,
+                                struct wa_error *error) WA_MUST_USE;
+enum wa_status wa_fill_comparison(const struct wa_identification *work, struct wa_result *result,
+                                  struct wa_error *error) WA_MUST_USE;
+enum wa_status wa_fill_explanation(const struct wa_identification *work, struct wa_result *result,
+                                   struct wa_error *error) WA_MUST_USE;
+
+/** What the curve alone says of a constant, less the table's value, in the uncertainty of both; NaN
+ * when it says next to nothing. `alone` and `alone_u` may be NULL. */
+double wa_constant_deviation(const struct wa_parameter *parameter, double table_u, double *alone,
+                             double *alone_u);
 
 /** Assumptions and findings beside the answer. */
 enum wa_status wa_fill_findings(const struct wa_identification *work, struct wa_result *result,

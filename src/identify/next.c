@@ -25,8 +25,8 @@ static enum wa_status add_next(struct wa_result *result, char *sentence, const c
         return wa_fail_memory(error);
     }
     result->next_tests = larger;
-    larger[result->next_test_count++] =
-        (struct wa_result_next){.sentence = sentence, .separates = copy};
+    larger[result->next_test_count++] = (struct wa_result_next){
+        .sentence = sentence, .separates = copy, .expected_bits = NAN, .expected_set = NAN};
     return WA_OK;
 }
 

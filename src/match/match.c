@@ -8,6 +8,11 @@ struct wa_match_storage {
     struct wa_group_list list;
 };
 
+const struct wa_group_list *wa_match_groups(const struct wa_match *match)
+{
+    return &match->storage->list;
+}
+
 static double log_not_in_table(const struct wa_experiment *experiment,
                                const struct wa_proton_study *study,
                                const struct wa_titrated_mass *mass)

@@ -30,13 +30,6 @@ struct wa_group_list {
     double unknown_observed; /**< ln of the likelihood of what else was observed, for that */
 };
 
-/** Share of the acids whose row in the table is wrong by more than it admits, and what their
- * constants' uncertainties are then taken for: this many times wider, and at least this wide.
- * Handbooks contradict one another about that often (common practice). */
-#define WA_ROW_WRONG_SHARE 0.05
-#define WA_ROW_WRONG_WIDER 4.0
-#define WA_ROW_WRONG_LEAST_U 0.1
-
 /** ln of the greater of the two densities of constants that are off by so much, relative to the
  * density of constants that are right: `strain` is the sum of their squared deviations in u. */
 double wa_log_strain(double strain, int constants);
@@ -48,6 +41,9 @@ struct wa_purity {
     double reagent_ln_u;
     double found_ln_s; /**< half-normal below 1, of this scale */
 };
+
+/** The groups of a finished match, borrowed. */
+const struct wa_group_list *wa_match_groups(const struct wa_match *match);
 
 /** The stated prior. */
 struct wa_purity wa_purity_default(void);

@@ -126,7 +126,7 @@ static json_t *verdict_of(const struct wa_verdict *verdict)
     return json_done(&object);
 }
 
-static json_t *sentences_of(const struct wa_result_sentence *sentences, size_t count)
+json_t *json_sentences(const struct wa_result_sentence *sentences, size_t count)
 {
     struct json_maker array = json_make_array();
     for (size_t i = 0; i < count; i++) {
@@ -145,6 +145,8 @@ static json_t *next_tests_of(const struct wa_result *result)
         struct json_maker object = json_make_object();
         json_put(&object, "sentence", json_text(result->next_tests[i].sentence));
         json_put(&object, "separates", json_split(result->next_tests[i].separates));
+        json_put(&object, "expected_bits", json_number(result->next_tests[i].expected_bits));
+        json_put(&object, "expected_set_size", json_number(result->next_tests[i].expected_set));
         json_add(&array, json_done(&object));
     }
     return json_done(&array);
@@ -183,7 +185,7 @@ static void put_stable(struct json_maker *answer, const struct wa_result *result
     json_put(answer, "not_in_table", json_done(&not_in_table));
     json_put(answer, "verdict", verdict_of(&result->verdict));
     json_put(answer, "set_aside", json_set_aside(result));
-    json_put(answer, "cautions", sentences_of(result->cautions, result->caution_count));
+    json_put(answer, "cautions", json_sentences(result->cautions, result->caution_count));
     json_put(answer, "next_tests", next_tests_of(result));
 }
 
@@ -192,8 +194,12 @@ static void put_additions(struct json_maker *answer, const struct wa_result *res
     json_put(answer, "amount", quantity_of(result->amount_mol, result->amount_u, "mol", NULL));
     json_put(answer, "equivalent_mass",
              quantity_of(result->equivalent_mass, result->equivalent_mass_u, "g/mol", NULL));
-    json_put(answer, "findings", sentences_of(result->findings, result->finding_count));
-    json_put(answer, "assumptions", sentences_of(result->assumptions, result->assumption_count));
+    json_put(answer, "findings", json_sentences(result->findings, result->finding_count));
+    json_put(answer, "assumptions", json_sentences(result->assumptions, result->assumption_count));
+    json_put(answer, "observed", json_observed(result));
+    json_put(answer, "comparison", json_comparison(result));
+    json_put(answer, "explanation", json_explanation(result));
+    json_put(answer, "missing_bits", json_number(result->missing_bits));
     json_put(answer, "table", table_of(result));
     json_put(answer, "runs", json_runs(result));
     json_put(answer, "parameters", json_parameters(result));

@@ -44,6 +44,10 @@ json_t *json_runs(const struct wa_result *result);
 json_t *json_set_aside(const struct wa_result *result);
 json_t *json_candidates(const struct wa_result *result);
 json_t *json_parameters(const struct wa_result *result);
+json_t *json_observed(const struct wa_result *result);
+json_t *json_comparison(const struct wa_result *result);
+json_t *json_explanation(const struct wa_result *result);
+json_t *json_sentences(const struct wa_result_sentence *sentences, size_t count);
 json_t *json_fit(const struct wa_result *result);
 
 #endif

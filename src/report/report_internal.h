@@ -109,6 +109,7 @@ void report_equivalence(struct report_writer *writer, const struct wa_result *re
 void report_pKa(struct report_writer *writer, const struct wa_result *result);
 void report_amount(struct report_writer *writer, const struct wa_result *result);
 void report_candidates(struct report_writer *writer, const struct wa_result *result);
+void report_weighing(struct report_writer *writer, const struct wa_result *result);
 void report_set_aside(struct report_writer *writer, const struct wa_result *result);
 void report_assumed(struct report_writer *writer, const struct wa_result *result);
 void report_fit(struct report_writer *writer, const struct wa_result *result);

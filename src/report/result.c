@@ -53,6 +53,13 @@ static void free_lists(struct wa_result *result)
     free_sentences(result->findings, result->finding_count);
     free_sentences(result->assumptions, result->assumption_count);
     free_sentences(result->cautions, result->caution_count);
+    free_sentences(result->observed, result->observed_count);
+    free_sentences(result->explanation, result->explanation_count);
+    free(result->explained);
+    free(result->comparison.first);
+    free(result->comparison.second);
+    free(result->comparison.sentence);
+    free(result->comparison.sensitivity);
     for (size_t i = 0; i < result->next_test_count; i++) {
         free(result->next_tests[i].sentence);
         free(result->next_tests[i].separates);

@@ -68,6 +68,7 @@ enum wa_status wa_report_text(const struct wa_result *result,
     report_pKa(&writer, result);
     report_amount(&writer, result);
     report_candidates(&writer, result);
+    report_weighing(&writer, result);
     report_set_aside(&writer, result);
     report_assumed(&writer, result);
     report_fit(&writer, result);
