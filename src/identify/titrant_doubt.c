@@ -3,6 +3,8 @@
  * the concentration; a mass and a substance whose constants fit do. */
 #include "identify/identify_internal.h"
 
+#include "match/match_internal.h"
+
 #include <math.h>
 #include <stdlib.h>
 
@@ -14,12 +16,6 @@ static double log_normal(double value, double mean, double u)
 {
     const double deviation = (value - mean) / u;
     return -0.5 * deviation * deviation - log(u) - 0.5 * log(2.0 * M_PI);
-}
-
-static double log_sum(double a, double b)
-{
-    const double high = fmax(a, b);
-    return isfinite(high) ? high + log1p(exp(fmin(a, b) - high)) : high;
 }
 
 /* ln of the amount found over that which the mass would give of this form. */
@@ -35,12 +31,15 @@ static double change_of(const struct wa_identification *work, const struct wa_ca
                         double surplus)
 {
     const double u = hypot(candidate->ln_amount_u, work->mass.u_g / work->mass.mass_g);
+    const int index = wa_fit_find(candidate->fit, WA_PARAMETER_LN_AMOUNT, 0, 0);
+    const struct wa_prior *broad = &candidate->fit->parameters[index].prior;
+    const struct wa_purity purity = wa_purity_default();
     const double right =
-        log_sum(log(WA_PURITY_REAGENT_SHARE) + log_normal(surplus, WA_PURITY_REAGENT_LN_MEAN,
-                                                          hypot(u, WA_PURITY_REAGENT_LN_U)),
-                log(1.0 - WA_PURITY_REAGENT_SHARE) +
-                    log_normal(surplus, WA_PURITY_FOUND_LN_MEAN, hypot(u, WA_PURITY_FOUND_LN_U)));
-    return log_normal(surplus, WA_PURITY_REAGENT_LN_MEAN, hypot(u, wrong_ln_u)) - right;
+        wa_log_mass_evidence(&work->mass, &purity, work->table->forms[candidate->form].molar_mass,
+                             candidate->ln_amount, candidate->ln_amount_u, broad);
+    const double wrong = log_normal(surplus, WA_PURITY_REAGENT_LN_MEAN, hypot(u, wrong_ln_u)) -
+                         log_normal(candidate->ln_amount, broad->mean, broad->u);
+    return wrong - right;
 }
 
 enum wa_status wa_find_titrant_doubt(const struct wa_identification *work, struct wa_result *result,
@@ -66,8 +65,8 @@ enum wa_status wa_find_titrant_doubt(const struct wa_identification *work, struc
         const double surplus = surplus_of(work, candidate);
         const double weight = candidate->log_weight - reference;
         const double changed = weight + change_of(work, candidate, surplus);
-        right = log_sum(right, weight);
-        wrong = log_sum(wrong, changed);
+        right = wa_log_sum(right, weight);
+        wrong = wa_log_sum(wrong, changed);
         if (changed > best) {
             best = changed;
             found = candidate;

@@ -61,7 +61,7 @@ static void say_stopped(const struct wa_identification *work,
         wa_text_append(reasons, ", its equivalent mass is below %.0f g/mol",
                        work->mass.mass_g / met);
     }
-    wa_text_append(reasons, "; go on to about twice that volume");
+    wa_text_append(reasons, "; go on until the pH has jumped and settled");
 }
 
 static size_t points_about(const struct wa_experiment *experiment, double volume_mL)
