@@ -65,12 +65,13 @@ struct wa_plan_indicator {
 
 /** How well a design does: standard uncertainties. */
 struct wa_plan_precision {
-    double pKa_u[WA_PROTONS_MAX];   /**< expected by the sensitivities */
-    double amount_u;                /**< relative */
-    double volume_u;                /**< mL, of the last equivalence volume, titrant known */
-    double pKa_rms[WA_PROTONS_MAX]; /**< found over the simulated runs; NaN without */
-    double amount_rms;              /**< relative */
-    int converged;                  /**< simulated runs that gave a fit */
+    double pKa_u[WA_PROTONS_MAX]; /**< expected by the sensitivities */
+    double amount_u;              /**< relative */
+    /** Found over the simulated runs: the standard deviation that a normal distribution with their
+     * median error has; NaN without runs. */
+    double pKa_error[WA_PROTONS_MAX];
+    double amount_error; /**< relative */
+    int converged;       /**< simulated runs that gave a fit */
 };
 
 /** How often the truth gets 95 % against a rival, by the number of readings. */
@@ -81,7 +82,8 @@ struct wa_plan_power {
 
 /** The plan. `additions_mL` are running totals. Pointers belong to the table. */
 struct wa_plan {
-    const struct wa_form *form;  /**< NULL for an unknown */
+    const struct wa_form *form;  /**< NULL for an unknown; else of the table, or own_form */
+    struct wa_form own_form;     /**< an acid that the table has no form of, by itself */
     const struct wa_form *rival; /**< NULL without */
     const struct wa_titrant *titrant;
     double concentration;
@@ -108,7 +110,7 @@ struct wa_plan {
 };
 
 /** Titrant 0.1 mol/L +- 0.1 %, 20 mL, 50 mL of solution, 25 degree Celsius, noise of 0.01 pH and
- * 0.01 mL, 0.3 mg, 30 readings, 40 trials, an acid of pKa 2 to 6 and 60 to 300 g/mol. */
+ * 0.01 mL, 0.3 mg, 30 readings, 200 trials, an acid of pKa 2 to 6 and 60 to 300 g/mol. */
 void wa_plan_defaults(struct wa_plan_options *options);
 
 /**

@@ -31,7 +31,7 @@ void wa_plan_defaults(struct wa_plan_options *options)
         .noise_volume = 0.01,
         .mass_u = 0.0003,
         .additions = 30,
-        .trials = 40,
+        .trials = 200,
         .seed = 1,
     };
 }
@@ -123,6 +123,12 @@ static double rounded_mass(double mass_g)
     return fmax(round(1e4 * mass_g), 1.0) / 1e4;
 }
 
+bool plan_finds(const struct wa_parameter *parameter)
+{
+    return parameter->kind == WA_PARAMETER_LN_AMOUNT ||
+           (parameter->kind == WA_PARAMETER_PK && parameter->prior.u >= open_pKa_u);
+}
+
 static void open_sample(struct wa_sample_model *sample)
 {
     for (int k = 0; k < sample->part_count; k++) {
@@ -133,6 +139,73 @@ static void open_sample(struct wa_sample_model *sample)
             }
         }
     }
+}
+
+/* An acid that no form of the table brings as such: its fully protonated species, with an ion that
+ * makes it neutral. */
+static bool acid_alone(const struct plan_work *work, struct wa_form *form)
+{
+    const char *name = work->options->form;
+    const int acid =
+        wa_table_find_form(work->table, name) < 0 ? wa_table_find_acid(work->table, name) : -1;
+    for (size_t f = 0; acid >= 0 && f < work->table->form_count; f++) {
+        const struct wa_form *known = &work->table->forms[f];
+        if (known->part_count == 1 && known->parts[0].acid == acid && known->parts[0].lost == 0) {
+            return false;
+        }
+    }
+    if (acid < 0 || !work->table->acids[acid].modelled) {
+        return false;
+    }
+    const struct wa_acid *from = &work->table->acids[acid];
+    *form = (struct wa_form){.key = from->key,
+                             .name = from->name,
+                             .formula = from->formula,
+                             .parts = {{.acid = acid, .count = 1, .lost = 0}},
+                             .part_count = 1,
+                             .spectator_charge = -from->charge,
+                             .spectator_z2 = from->charge * from->charge,
+                             .modelled = true};
+    return wa_table_molar_mass(work->table, from->formula, &form->molar_mass, &form->molar_mass_u,
+                               NULL) == WA_OK;
+}
+
+static void set_sample(struct plan_work *work)
+{
+    const struct wa_prior amount = {.mean = log(work->moles), .u = open_ln_amount_u};
+    wa_match_sample(work->table, work->plan->form, &work->experiment, usual_ionic_strength, &amount,
+                    &work->sample);
+    open_sample(&work->sample);
+}
+
+/* The acid of own_form: as many protons as a base can take, the conditions of a stand-in. */
+static enum wa_status lone_acid(struct plan_work *work, struct wa_error *error)
+{
+    const struct wa_plan_options *o = work->options;
+    struct wa_plan *plan = work->plan;
+    struct wa_simulation simulation;
+    const enum wa_status status = simulate(work, "acetic-acid", 0.0, &simulation, error);
+    if (status != WA_OK) {
+        return status;
+    }
+    plan->form = &plan->own_form;
+    plan->titrant = simulation.titrant;
+    plan->molar_mass = plan->form->molar_mass;
+    const struct wa_acid *acid = &work->table->acids[plan->form->parts[0].acid];
+    int protons = 0;
+    for (int i = 0; i < acid->step_count; i++) {
+        protons += acid->steps[i].pKa < open_high;
+    }
+    work->moles = 1e-3 * o->end_point_mL * o->titrant_concentration.value * plan->titrant->protons /
+                  fmax(protons, 1);
+    plan->mass_g = rounded_mass(work->moles * plan->molar_mass);
+    work->moles = plan->mass_g / plan->molar_mass;
+    const enum wa_status collected = collect(work, &simulation, error);
+    wa_simulation_free(&simulation);
+    if (collected == WA_OK) {
+        set_sample(work);
+    }
+    return collected;
 }
 
 static enum wa_status known_form(struct plan_work *work, struct wa_error *error)
@@ -157,10 +230,7 @@ static enum wa_status known_form(struct plan_work *work, struct wa_error *error)
     status = collect(work, &second, error);
     wa_simulation_free(&second);
     if (status == WA_OK) {
-        const struct wa_prior amount = {.mean = log(work->moles), .u = open_ln_amount_u};
-        wa_match_sample(work->table, plan->form, &work->experiment, usual_ionic_strength, &amount,
-                        &work->sample);
-        open_sample(&work->sample);
+        set_sample(work);
     }
     return status;
 }
@@ -228,7 +298,9 @@ enum wa_status wa_plan_make(const struct wa_table *table, const struct wa_plan_o
     *plan = (struct wa_plan){.chosen = -1, .concentration = options->titrant_concentration.value};
     enum wa_status status = check(options, error);
     if (status == WA_OK) {
-        status = options->form != NULL ? known_form(&work, error) : unknown(&work, error);
+        status = options->form == NULL                ? unknown(&work, error)
+                 : acid_alone(&work, &plan->own_form) ? lone_acid(&work, error)
+                                                      : known_form(&work, error);
     }
     if (status == WA_OK) {
         status = plan_steps(&work, error);

@@ -15,6 +15,10 @@ struct plan_work {
     double moles;
 };
 
+/** Whether a plan is to find this parameter: a constant that is left open, or the amount. Constants
+ * with a prior from the table are known already. */
+bool plan_finds(const struct wa_parameter *parameter);
+
 /** Steps, jumps and indicators from the titration. */
 enum wa_status plan_steps(struct plan_work *work, struct wa_error *error) WA_MUST_USE;
 enum wa_status plan_indicators(struct plan_work *work, struct wa_error *error) WA_MUST_USE;

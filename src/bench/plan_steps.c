@@ -10,6 +10,9 @@ static const double strong_pKa = 0.0;    /* stands for the hydronium ion */
 static const double visible_jump = 0.4;  /* pH over 2 % of the volume */
 static const double small_error = 0.003; /* of the volume, for an indicator that will do */
 static const double step_of_slope = 1e-4;
+static const double narrow = 0.01;   /* of the volume, for the whole change of an indicator */
+static const double eye = 1.0 / 3.0; /* part of half a change that two people differ by */
+static const double nothing = 1e-9;  /* stands for carbonate that is not there */
 
 double wa_plan_reaction_constant(double donor, double acceptor, double pKw)
 {
@@ -146,6 +149,10 @@ static enum wa_status compose(struct plan_work *work, struct wa_error *error)
 {
     struct wa_experiment none = work->experiment;
     none.count = 0;
+    none.ln_carbon_dioxide.mean = log(nothing);
+    if (!(work->options->titrant_carbonate.value > 0.0)) {
+        none.ln_carbonate.mean = log(nothing);
+    }
     return wa_fit_expect(&none, &work->sample, NULL, NULL, NULL, NULL, &work->titration, error);
 }
 
@@ -228,15 +235,21 @@ static bool indicator_of(const struct plan_work *work, const struct wa_indicator
     }
     found->error_mL = at - step->volume_mL;
     found->spread_mL = 0.5 * fabs(high - low);
-    found->within = fabs(found->error_mL) <= small_error * step->volume_mL;
+    found->within = fabs(found->error_mL) <= small_error * step->volume_mL &&
+                    found->spread_mL <= narrow * step->volume_mL;
     return isfinite(found->error_mL) && isfinite(found->spread_mL);
 }
 
-/* Keep the list sorted by size of the error; the worst falls off its end. */
+static double badness(const struct wa_plan_indicator *found)
+{
+    return hypot(found->error_mL, eye * found->spread_mL);
+}
+
+/* Keep the list sorted, the worst falls off its end. */
 static void insert(struct wa_plan *plan, const struct wa_plan_indicator *found)
 {
     int at = plan->indicator_count;
-    while (at > 0 && fabs(plan->indicators[at - 1].error_mL) > fabs(found->error_mL)) {
+    while (at > 0 && badness(&plan->indicators[at - 1]) > badness(found)) {
         at--;
     }
     if (at >= WA_PLAN_INDICATORS_MAX) {

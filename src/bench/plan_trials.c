@@ -5,12 +5,15 @@
 
 #include <gsl/gsl_randist.h>
 #include <gsl/gsl_rng.h>
+#include <gsl/gsl_sort.h>
+#include <gsl/gsl_statistics.h>
 #include <math.h>
-#include <string.h>
+#include <stdlib.h>
 
 static const double purity_u = 0.005; /* of a sample whose mass is to tell its molar mass */
 static const double enough = 0.95;    /* probability that counts as told */
-static const int power_trials = 15;   /* with either candidate as the truth */
+static const double normal_over_median = 1.4826;
+static const int power_trials = 15; /* with either candidate as the truth */
 static const double usual_ionic_strength = 0.05;
 
 /* Simulated readings at the volumes of an experiment: its priors are drawn from, but for what the
@@ -44,33 +47,47 @@ static enum wa_status read_run(const struct plan_work *work, const struct wa_sam
     return status;
 }
 
-/* Squares of the errors of one run, added up. */
-static bool add_errors(const struct wa_fit *fit, double *pKa_square, double *amount_square)
+/* Absolute errors of the runs so far: of each constant, then of the amount. */
+struct errors {
+    double *values[WA_PROTONS_MAX + 1]; /* `trials` each */
+    int count;
+};
+
+static void add_errors(const struct wa_fit *fit, struct errors *errors)
 {
     int pKa = 0;
-    if (!fit->converged) {
-        return false;
-    }
     for (int i = 0; i < fit->parameter_count; i++) {
         const struct wa_parameter *parameter = &fit->parameters[i];
-        const double off = parameter->value - parameter->prior.mean;
+        const double off = fabs(parameter->value - parameter->prior.mean);
+        if (!plan_finds(parameter)) {
+            continue;
+        }
         if (parameter->kind == WA_PARAMETER_PK && pKa < WA_PROTONS_MAX) {
-            pKa_square[pKa++] += off * off;
+            errors->values[pKa++][errors->count] = off;
         } else if (parameter->kind == WA_PARAMETER_LN_AMOUNT) {
-            *amount_square += off * off;
+            errors->values[WA_PROTONS_MAX][errors->count] = off;
         }
     }
-    return true;
+    errors->count++;
 }
 
-static enum wa_status try_design(struct plan_work *work, const double *volume_mL, gsl_rng *random,
-                                 struct wa_plan_precision *precision, struct wa_error *error)
+/* The standard deviation that a normal distribution with this median error has: the few runs that
+ * meet much carbonate do not decide what is usual. */
+static double usual_error(double *values, int count)
 {
-    double pKa_square[WA_PROTONS_MAX] = {0.0}, amount_square = 0.0;
+    gsl_sort(values, 1, (size_t)count);
+    return count > 0
+               ? gsl_stats_median_from_sorted_data(values, 1, (size_t)count) * normal_over_median
+               : (double)NAN;
+}
+
+static enum wa_status try_runs(struct plan_work *work, const double *volume_mL, gsl_rng *random,
+                               struct errors *errors, struct wa_error *error)
+{
     enum wa_status status = WA_OK;
     for (int t = 0; t < work->options->trials && status == WA_OK; t++) {
         struct wa_experiment experiment;
-        struct wa_fit fit = {.parameter_count = 0};
+        struct wa_fit fit;
         status = plan_experiment(&work->experiment, volume_mL, (size_t)work->plan->addition_count,
                                  &experiment, error);
         if (status != WA_OK) {
@@ -79,16 +96,35 @@ static enum wa_status try_design(struct plan_work *work, const double *volume_mL
         status = read_run(work, &work->sample, true, random, &experiment, error);
         if (status == WA_OK &&
             wa_fit_run(&experiment, &work->sample, NULL, NULL, &fit, NULL) == WA_OK) {
-            precision->converged += add_errors(&fit, pKa_square, &amount_square);
+            if (fit.converged) {
+                add_errors(&fit, errors);
+            }
             wa_fit_free(&fit);
         }
         wa_experiment_free(&experiment);
     }
-    const double n = precision->converged > 0 ? precision->converged : (double)NAN;
-    for (int i = 0; i < work->plan->free_pKa_count; i++) {
-        precision->pKa_rms[i] = sqrt(pKa_square[i] / n);
+    return status;
+}
+
+static enum wa_status try_design(struct plan_work *work, const double *volume_mL, gsl_rng *random,
+                                 struct wa_plan_precision *precision, struct wa_error *error)
+{
+    const size_t trials = (size_t)work->options->trials;
+    double *values = calloc(trials * (WA_PROTONS_MAX + 1), sizeof *values);
+    struct errors errors = {.count = 0};
+    if (values == NULL) {
+        return wa_fail_memory(error);
     }
-    precision->amount_rms = sqrt(amount_square / n);
+    for (size_t i = 0; i <= WA_PROTONS_MAX; i++) {
+        errors.values[i] = values + i * trials;
+    }
+    const enum wa_status status = try_runs(work, volume_mL, random, &errors, error);
+    precision->converged = errors.count;
+    for (int i = 0; i < work->plan->free_pKa_count; i++) {
+        precision->pKa_error[i] = usual_error(errors.values[i], errors.count);
+    }
+    precision->amount_error = usual_error(errors.values[WA_PROTONS_MAX], errors.count);
+    free(values);
     return status;
 }
 
@@ -149,19 +185,37 @@ static enum wa_status told(const struct plan_work *work,
     return status;
 }
 
+/* A form by its name, or the one that brings an acid alone and whole. */
+static const struct wa_form *find_form(const struct wa_table *table, const char *name)
+{
+    const int form = wa_table_find_form(table, name);
+    const int acid = wa_table_find_acid(table, name);
+    if (form >= 0) {
+        return table->forms[form].modelled ? &table->forms[form] : NULL;
+    }
+    for (size_t f = 0; acid >= 0 && f < table->form_count; f++) {
+        const struct wa_form *known = &table->forms[f];
+        if (known->modelled && known->part_count == 1 && known->parts[0].acid == acid &&
+            known->parts[0].lost == 0) {
+            return known;
+        }
+    }
+    return NULL;
+}
+
 static enum wa_status find_rival(struct plan_work *work, struct wa_error *error)
 {
-    const int form = wa_table_find_form(work->table, work->options->rival);
-    if (form < 0 || !work->table->forms[form].modelled || work->plan->form == NULL) {
+    if (work->plan->form == NULL) {
         return wa_fail(error, WA_ERROR_CALL, NULL, 0,
-                       work->plan->form == NULL
-                           ? "To tell two candidates apart, name both."
-                           : "The table has no form '%.80s' with a model; `whichacid table list` "
-                             "shows all.",
-                       work->options->rival);
+                       "To tell two candidates apart, name the first as the sample.");
     }
-    work->plan->rival = &work->table->forms[form];
-    return WA_OK;
+    work->plan->rival = find_form(work->table, work->options->rival);
+    return work->plan->rival != NULL
+               ? WA_OK
+               : wa_fail(error, WA_ERROR_CALL, NULL, 0,
+                         "The table has no form '%.80s' with a model; 'whichacid table list' shows "
+                         "the keys.",
+                         work->options->rival);
 }
 
 enum wa_status plan_power(struct plan_work *work, struct wa_error *error)

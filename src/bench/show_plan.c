@@ -10,6 +10,21 @@ static const char *name_of(const struct wa_plan *plan)
     return plan->form != NULL ? plan->form->name : "the unknown";
 }
 
+/* The table writes the names of titrants with a capital. */
+struct in_sentence {
+    char text[96];
+};
+
+static struct in_sentence small(const char *name)
+{
+    struct in_sentence words;
+    snprintf(words.text, sizeof words.text, "%s", name);
+    if (words.text[0] >= 'A' && words.text[0] <= 'Z' && words.text[1] >= 'a') {
+        words.text[0] = (char)(words.text[0] - 'A' + 'a');
+    }
+    return words;
+}
+
 static void say(struct wa_text *out, size_t indent, const char *format, ...) WA_PRINTF(3, 4);
 
 static void say(struct wa_text *out, size_t indent, const char *format, ...)
@@ -31,15 +46,15 @@ static void say_why_not(struct wa_text *out, const struct wa_plan *plan)
     }
     if (best == NULL) {
         say(out, 0, "It cannot work: %s has nothing that %s takes or gives in water.",
-            name_of(plan), plan->titrant->name);
+            name_of(plan), small(plan->titrant->name).text);
         return;
     }
     say(out, 0,
         "It cannot work: the reaction of %s with %s has an equilibrium constant of %.2g, and about "
         "%.0e is needed. With equal amounts %.3g %% would be left unreacted, and the pH moves by "
         "%.2f only while the volume goes from 1 %% short to 1 %% over.",
-        name_of(plan), plan->titrant->name, best->K, WA_COMPLETE_K, 100.0 * best->unconverted,
-        best->wide_jump);
+        name_of(plan), small(plan->titrant->name).text, best->K, WA_COMPLETE_K,
+        100.0 * best->unconverted, best->wide_jump);
     say(out, 0, "%s",
         plan->titrant->is_weak
             ? "A weak acid and a weak base do not use each other up: take a strong titrant."
@@ -49,8 +64,8 @@ static void say_why_not(struct wa_text *out, const struct wa_plan *plan)
 
 static void verdict(struct wa_text *out, const struct wa_plan *plan)
 {
-    wa_text_append(out, "%s with %s, %.4g mol/L\n\n", name_of(plan), plan->titrant->name,
-                   plan->concentration);
+    wa_text_append(out, "%s with %s, %.4g mol/L\n\n", name_of(plan),
+                   small(plan->titrant->name).text, plan->concentration);
     if (plan->chosen < 0) {
         say_why_not(out, plan);
         return;
@@ -128,17 +143,18 @@ static void precision(struct wa_text *out, const struct wa_plan *plan,
     for (int i = 0; i < plan->free_pKa_count; i++) {
         wa_text_append(out, "  pKa %-6.2f     %.4f", plan->free_pKa[i], d->pKa_u[i]);
         if (tried) {
-            wa_text_append(out, " (found %.4f)  %.4f (found %.4f)  x %.2f\n", d->pKa_rms[i],
-                           e->pKa_u[i], e->pKa_rms[i], e->pKa_u[i] / d->pKa_u[i]);
+            wa_text_append(out, " (found %.4f)  %.4f (found %.4f)  x %.2f\n", d->pKa_error[i],
+                           e->pKa_u[i], e->pKa_error[i], e->pKa_u[i] / d->pKa_u[i]);
         } else {
             wa_text_append(out, "                %.4f\n", e->pKa_u[i]);
         }
     }
     wa_text_append(out, "  amount         %.3f %%", 100.0 * d->amount_u);
     if (tried) {
-        wa_text_append(out, " (found %.3f)   %.3f %% (found %.3f)  x %.2f\n", 100.0 * d->amount_rms,
-                       100.0 * e->amount_u, 100.0 * e->amount_rms, e->amount_u / d->amount_u);
-        wa_text_append(out, "  (found: root mean square error of %d and %d simulated runs)\n",
+        wa_text_append(out, " (found %.3f)   %.3f %% (found %.3f)  x %.2f\n",
+                       100.0 * d->amount_error, 100.0 * e->amount_u, 100.0 * e->amount_error,
+                       e->amount_u / d->amount_u);
+        wa_text_append(out, "  (found: over %d and %d simulated runs, by their median error)\n",
                        d->converged, e->converged);
     } else {
         wa_text_append(out, "               %.3f %%\n", 100.0 * e->amount_u);
@@ -183,7 +199,8 @@ static enum wa_status done(struct wa_text *out, char **text, struct wa_error *er
 static void sheet(struct wa_text *out, const struct wa_plan *plan,
                   const struct wa_plan_options *options)
 {
-    wa_text_append(out, "BENCH SHEET   %s with %s\n\n", name_of(plan), plan->titrant->name);
+    wa_text_append(out, "BENCH SHEET   %s with %s\n\n", name_of(plan),
+                   small(plan->titrant->name).text);
     wa_text_append(out, "  Date ______________  Analyst ______________  Sample ______________\n");
     wa_text_append(out, "  Weigh about %.4f g:        weighed ______________ g\n", plan->mass_g);
     wa_text_append(out, "  Make up to %.4g mL with water, stir, wait for a steady reading.\n",
@@ -209,6 +226,12 @@ static void sheet(struct wa_text *out, const struct wa_plan *plan,
     say(out, 2,
         "The burette is read from 0. Volumes missed by a few hundredths do no harm: write down "
         "what was added. The pH expected holds for the sample as planned.");
+    if (plan->form == NULL) {
+        say(out, 2,
+            "This is an unknown: if the jump does not come, go on in steps of 1 mL until the pH "
+            "stays %s; in the jump take steps of 0.1 mL.",
+            plan->titrant->is_base ? "above 11.5" : "below 2.5");
+    }
 }
 
 enum wa_status wa_plan_sheet(const struct wa_plan *plan, const struct wa_plan_options *options,

@@ -58,9 +58,9 @@ static json_t *precision_json(const struct wa_plan *plan, const struct wa_plan_p
 {
     return json_pack("{s:o, s:o, s:o, s:o, s:i}", "pKa_u", numbers(p->pKa_u, plan->free_pKa_count),
                      "amount_relative_u", bench_number(p->amount_u), "simulated_pKa_error",
-                     tried ? numbers(p->pKa_rms, plan->free_pKa_count) : json_null(),
+                     tried ? numbers(p->pKa_error, plan->free_pKa_count) : json_null(),
                      "simulated_amount_relative_error",
-                     tried ? bench_number(p->amount_rms) : json_null(), "simulated_runs",
+                     tried ? bench_number(p->amount_error) : json_null(), "simulated_runs",
                      p->converged);
 }
 

@@ -75,7 +75,7 @@ static const struct argp_option own_options[] = {
     {"noise-volume", key_noise_volume, "VOLUME", 0, "standard deviation of one volume (0.01 mL)",
      3},
     {"mass-uncertainty", key_mass_u, "MASS", 0, "of the balance (0.3 mg)", 3},
-    {"trials", key_trials, "N", 0, "simulated runs of each design (40); 0: none", 3},
+    {"trials", key_trials, "N", 0, "simulated runs of each design (200); 0: none", 3},
     {"seed", key_seed, "N", 0, "of the random numbers (1)", 3},
     {.doc = "Result:", .group = 4},
     {"sheet", key_sheet, NULL, 0, "only the sheet for the bench", 4},
