@@ -10,7 +10,7 @@
 #include <stdint.h>
 
 /** Most inputs of one budget. */
-#define WA_BENCH_INPUTS_MAX 24
+#define WA_BENCH_INPUTS_MAX 40
 
 /** Volume expansion of water at room temperature, per K (Eurachem/CITAC CG 4, A1.4); glass expands
  * ten times less and is left out, as there. */

@@ -3,7 +3,9 @@
 #ifndef WHICHACID_BENCH_REPORT_H
 #define WHICHACID_BENCH_REPORT_H
 
+#include "whichacid/bench_amount.h"
 #include "whichacid/bench_calibrate.h"
+#include "whichacid/bench_plan.h"
 #include "whichacid/bench_standardize.h"
 
 /** Value of "kind" in a file that holds a titrant, and in one that holds an electrode. */
@@ -36,6 +38,26 @@ enum wa_status wa_electrode_json(const struct wa_electrode *electrode,
                                  const struct wa_electrode *after,
                                  const struct wa_electrode_limits *limits, char **text,
                                  struct wa_error *error) WA_MUST_USE;
+
+/** A plan for people; ownership as above. */
+enum wa_status wa_plan_text(const struct wa_plan *plan, const struct wa_plan_options *options,
+                            char **text, struct wa_error *error) WA_MUST_USE;
+
+/** The sheet to take to the bench: what to weigh, the volumes to add, and room for the readings. */
+enum wa_status wa_plan_sheet(const struct wa_plan *plan, const struct wa_plan_options *options,
+                             char **text, struct wa_error *error) WA_MUST_USE;
+
+/** A plan as JSON. */
+enum wa_status wa_plan_json(const struct wa_plan *plan, const struct wa_plan_options *options,
+                            char **text, struct wa_error *error) WA_MUST_USE;
+
+/** Amounts for people; `with_candidates` lists the forms that agree by mass. Ownership as above. */
+enum wa_status wa_amount_text(const struct wa_amount_result *result, bool with_candidates,
+                              char **text, struct wa_error *error) WA_MUST_USE;
+
+/** Amounts as JSON. */
+enum wa_status wa_amount_json(const struct wa_amount_result *result, char **text,
+                              struct wa_error *error) WA_MUST_USE;
 
 /** What a file of this room says of a titrant or an electrode, as notes for a run. */
 struct wa_bench_file {

@@ -43,6 +43,7 @@ struct wa_suspicion {
     enum wa_parameter_kind parameter; /**< what `value` is of, where a refit gave it */
     size_t row;                       /**< of the experiment, where the fault is about a row */
     enum wa_fault_row which;
+    bool explains; /**< with the fault the curve describes the run; else it is not said */
     bool said;
     char *sentence; /**< NULL unless said */
 };

@@ -168,6 +168,19 @@ enum wa_status wa_fit_run(const struct wa_experiment *experiment,
 int wa_fit_parameters(const struct wa_experiment *experiment, const struct wa_sample_model *sample,
                       struct wa_parameter parameters[WA_PARAMETERS_MAX]);
 
+/**
+ * What a model expects at the volumes of an experiment, whose readings only start the search.
+ * @param[in]  values     of the parameters in the order of wa_fit_parameters, NULL: prior means
+ * @param[out] reading    one a point, may be NULL
+ * @param[out] slope      d reading / d volume, per mL, one a point, may be NULL
+ * @param[out] jacobian   d reading / d parameter, point by point, may be NULL
+ * @param[out] titration  the composition, may be NULL
+ */
+enum wa_status wa_fit_expect(const struct wa_experiment *experiment,
+                             const struct wa_sample_model *sample, const double *values,
+                             double *reading, double *slope, double *jacobian,
+                             struct wa_titration *titration, struct wa_error *error) WA_MUST_USE;
+
 /** Index of a parameter, or -1. */
 int wa_fit_find(const struct wa_fit *fit, enum wa_parameter_kind kind, int part, int step);
 

@@ -17,6 +17,8 @@ struct command {
 int command_inspect(int argument_count, char **arguments);
 int command_standardize(int argument_count, char **arguments);
 int command_calibrate(int argument_count, char **arguments);
+int command_plan(int argument_count, char **arguments);
+int command_amount(int argument_count, char **arguments);
 int command_table(int argument_count, char **arguments);
 int command_identify(int argument_count, char **arguments);
 int command_simulate(int argument_count, char **arguments);

@@ -8,6 +8,8 @@ static const struct command commands[] = {
     {"inspect", "show how a file was understood, row by row", command_inspect},
     {"standardize", "concentration of a titrant against a primary standard", command_standardize},
     {"calibrate", "slope and offset of an electrode from buffer readings", command_calibrate},
+    {"plan", "will it work, what to weigh, which volumes to add", command_plan},
+    {"amount", "amounts from weighings, flasks and end points, without a curve", command_amount},
     {"table", "check, list or show the reference table", command_table},
     {"simulate", "write a synthetic run from the model", command_simulate},
 };

@@ -33,15 +33,20 @@ static void choose_bases(struct wa_inquiry *inquiry)
     const bool base = inquiry->experiment->titrant_is_base;
     inquiry->bases[inquiry->base_count++] = &study->generic[0];
     for (int n = 1; n < WA_BASES_MAX; n++) {
+        bool chosen = false, neutral = false;
         for (int i = 0; i < study->count; i++) {
             const struct wa_generic *generic = &study->generic[i];
-            if (generic->step_count == n && generic->lost == (base ? 0 : n)) {
-                inquiry->plain[inquiry->plain_count++] = generic;
-                if (i > 0) {
-                    inquiry->bases[inquiry->base_count++] = generic;
-                }
-                break;
+            if (generic->step_count != n || generic->lost != (base ? 0 : n)) {
+                continue;
             }
+            if (!chosen && i > 0) {
+                inquiry->bases[inquiry->base_count++] = generic;
+            }
+            if (!neutral && generic->charge == generic->lost) {
+                inquiry->neutral[inquiry->neutral_count++] = generic;
+                neutral = true;
+            }
+            chosen = true;
         }
     }
     inquiry->log_evidence = fmax(inquiry->log_evidence,
@@ -85,8 +90,14 @@ static void weigh_runs(const struct wa_inquiry *inquiry, struct wa_diagnosis *di
     const struct wa_runs_test test =
         wa_runs_test(fit->residual, fit->outlier, inquiry->experiment->count);
     suspicion->weighed = true;
+    suspicion->explains = true;
     suspicion->statistic = -log(fmax(test.chance, 1e-300));
     suspicion->value = (double)test.runs;
+}
+
+static bool is_beyond(const struct wa_suspicion *suspicion)
+{
+    return suspicion->weighed && suspicion->explains && suspicion->statistic > suspicion->threshold;
 }
 
 /* Say what is beyond its threshold, of the faults that refits weigh only those that come near the
@@ -98,13 +109,12 @@ static enum wa_status say(const struct wa_inquiry *inquiry, struct wa_diagnosis 
     double best = -INFINITY;
     bool any = false;
     for (int k = 0; k < WA_FAULT_KINDS; k++) {
-        if (all[k].weighed && all[k].statistic > all[k].threshold && k != WA_FAULT_FEW_POINTS &&
-            k != WA_FAULT_RUNS) {
+        if (is_beyond(&all[k]) && k != WA_FAULT_FEW_POINTS && k != WA_FAULT_RUNS) {
             best = fmax(best, all[k].log_evidence);
         }
     }
     for (int k = 0; k < WA_FAULT_KINDS; k++) {
-        const bool beyond = all[k].weighed && all[k].statistic > all[k].threshold;
+        const bool beyond = is_beyond(&all[k]);
         all[k].said =
             beyond && (k == WA_FAULT_FEW_POINTS ||
                        (k == WA_FAULT_RUNS ? !any : all[k].log_evidence > best - rival_within));

@@ -19,8 +19,8 @@ struct wa_inquiry {
     const struct wa_proton_study *study;
     const struct wa_generic *bases[WA_BASES_MAX]; /**< the best first */
     int base_count;
-    const struct wa_generic *plain[WA_BASES_MAX]; /**< of these, whose every proton takes part */
-    int plain_count;
+    const struct wa_generic *neutral[WA_BASES_MAX]; /**< uncharged as weighed: may be solid */
+    int neutral_count;
     double log_evidence; /**< without any fault */
     double *course;      /**< 0 to 1 by time, else by the order of the points */
     bool timed;
@@ -34,17 +34,24 @@ struct wa_refit {
     double log_evidence; /**< -INFINITY when nothing converged */
     const struct wa_generic *base;
     double value, u; /**< of the parameter asked for */
+    bool explains;   /**< the points scatter about it as points do */
+};
+
+/** Where a refit starts: where the base's fit ended, but for these. */
+struct wa_refit_start {
+    double value;    /**< of the parameter asked for; NaN: its own start */
+    double pK_shift; /**< added to every constant */
+    bool solid;      /**< the species as weighed may be solid; only neutral bases are tried */
 };
 
 /**
  * Fit an altered experiment from each base and keep the best evidence.
- * @param[in] kind   the parameter whose posterior is wanted
- * @param[in] start  where that parameter starts; NaN: where the base left it
- * @param[in] solid  the species as weighed may be solid
+ * @param[in] kind        the parameter whose posterior is wanted
+ * @param[in] iterations  0: until it converges, from afar; else a quick try of so many
  */
 enum wa_status wa_refit(const struct wa_inquiry *inquiry, const struct wa_experiment *experiment,
-                        enum wa_parameter_kind kind, double start, bool solid, int iterations,
-                        struct wa_refit *refit, struct wa_error *error) WA_MUST_USE;
+                        enum wa_parameter_kind kind, const struct wa_refit_start *start,
+                        int iterations, struct wa_refit *refit, struct wa_error *error) WA_MUST_USE;
 
 /** Faults of the whole run: electrode, carbonate, uptake, drift, precipitate. */
 enum wa_status wa_weigh_whole_run(const struct wa_inquiry *inquiry, struct wa_diagnosis *diagnosis,

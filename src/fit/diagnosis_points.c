@@ -63,6 +63,7 @@ void wa_weigh_jump(const struct wa_inquiry *inquiry, struct wa_diagnosis *diagno
     for (size_t i = 1; volume > 0.0 && i < e->count; i++) {
         if (e->volume_mL[i - 1] <= volume && e->volume_mL[i] > volume) {
             suspicion->weighed = true;
+            suspicion->explains = true;
             suspicion->statistic = (e->volume_mL[i] - e->volume_mL[i - 1]) / volume / gap_allowed;
             suspicion->value = volume;
             suspicion->row = i;

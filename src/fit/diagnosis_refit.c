@@ -4,64 +4,77 @@
 #include <math.h>
 #include <stdlib.h>
 
+static const double scatter_most = 0.06;       /* pH */
+static const double runs_chance_least = 0.001; /* of so few runs */
+static const double outliers_most = 0.12;      /* of the points */
+
+/* ln of the amount that a fit of this base would need if the strong acid or base beside it were
+ * acid as well. */
+static double ln_whole_amount(const struct wa_experiment *experiment, const struct wa_generic *base)
+{
+    const struct wa_fit *fit = &base->fit;
+    const double ln_amount = fit->parameters[wa_fit_find(fit, WA_PARAMETER_LN_AMOUNT, 0, 0)].value;
+    const int index = wa_fit_find(fit, WA_PARAMETER_EXCESS, 0, 0);
+    const double excess = index >= 0 ? fit->parameters[index].value / base->step_count : 0.0;
+    const double whole = exp(ln_amount) + (experiment->titrant_is_base ? excess : -excess);
+    return whole > 0.0 ? log(whole) : ln_amount;
+}
+
 /* Values of the base's fit where the parameter exists there, else the prior mean. */
-static void start_from(const struct wa_generic *base, const struct wa_parameter *parameters,
-                       int count, enum wa_parameter_kind kind, double start, double *values)
+static void start_from(const struct wa_experiment *experiment, const struct wa_generic *base,
+                       const struct wa_parameter *parameters, int count,
+                       enum wa_parameter_kind kind, const struct wa_refit_start *start,
+                       double *values)
 {
     for (int i = 0; i < count; i++) {
         const struct wa_parameter *p = &parameters[i];
         const int index = wa_fit_find(&base->fit, p->kind, p->part, p->step);
         values[i] = index >= 0 ? base->fit.parameters[index].value : p->prior.mean;
-        if (p->kind == kind && isfinite(start)) {
-            values[i] = start;
+        if (p->kind == kind && isfinite(start->value)) {
+            values[i] = start->value;
+        } else if (p->kind == WA_PARAMETER_PK) {
+            values[i] += start->pK_shift;
+        } else if (p->kind == WA_PARAMETER_LN_AMOUNT && !(experiment->excess_u > 0.0)) {
+            values[i] = ln_whole_amount(experiment, base);
         }
     }
 }
 
-/* A few rounds under blunt noise: where solid and solution meet the curve has a corner, and with
- * sharp noise the fit would rather call half of the points outliers than move it. */
-static enum wa_status settle(const struct wa_experiment *experiment,
-                             const struct wa_sample_model *sample, double *values,
-                             struct wa_error *error)
+/* A fault is believed when the curve with it describes the run: with a modest scatter, nearly all
+ * points, and residuals in random order. Otherwise something else is wrong as well, or instead. */
+static bool explains(const struct wa_experiment *experiment, const struct wa_fit *fit)
 {
-    static const struct wa_prior blunt_reading = {.mean = -2.3, .u = 0.05}; /* 0.1 pH */
-    static const struct wa_fit_options few = {.most_iterations = 12};
-    struct wa_experiment blunt = *experiment;
-    struct wa_fit fit;
-    blunt.ln_noise_reading = blunt_reading;
-    const enum wa_status status = wa_fit_run(&blunt, sample, &few, values, &fit, error);
-    if (status == WA_OK && fit.misfit > 0.0) {
-        for (int i = 0; i < fit.parameter_count; i++) {
-            values[i] = fit.parameters[i].value;
-        }
+    const struct wa_runs_test test = wa_runs_test(fit->residual, fit->outlier, experiment->count);
+    double outliers = 0.0;
+    for (size_t p = 0; p < experiment->count; p++) {
+        outliers += fit->outlier[p];
     }
-    wa_fit_free(&fit);
-    return status;
+    return fit->noise_reading < scatter_most && test.chance > runs_chance_least &&
+           outliers < outliers_most * (double)experiment->count;
 }
 
 enum wa_status wa_refit(const struct wa_inquiry *inquiry, const struct wa_experiment *experiment,
-                        enum wa_parameter_kind kind, double start, bool solid, int iterations,
-                        struct wa_refit *refit, struct wa_error *error)
+                        enum wa_parameter_kind kind, const struct wa_refit_start *start,
+                        int iterations, struct wa_refit *refit, struct wa_error *error)
 {
-    const struct wa_fit_options options = {.most_iterations = iterations};
+    const struct wa_fit_options options = {.most_iterations = iterations,
+                                           .from_afar = iterations == 0};
     *refit = (struct wa_refit){.log_evidence = -INFINITY};
-    const struct wa_generic *const *bases = solid ? inquiry->plain : inquiry->bases;
-    const int count_of_bases = solid ? inquiry->plain_count : inquiry->base_count;
+    const struct wa_generic *const *bases = start->solid ? inquiry->neutral : inquiry->bases;
+    const int count_of_bases = start->solid ? inquiry->neutral_count : inquiry->base_count;
     for (int b = 0; b < count_of_bases; b++) {
         const struct wa_generic *base = bases[b];
         struct wa_parameter parameters[WA_PARAMETERS_MAX];
         double values[WA_PARAMETERS_MAX];
         struct wa_sample_model sample = base->sample;
-        if (solid) {
+        if (start->solid) {
             sample.parts[0].solid_species = base->lost;
         }
         const int count = wa_fit_parameters(experiment, &sample, parameters);
-        start_from(base, parameters, count, kind, start, values);
+        start_from(experiment, base, parameters, count, kind, start, values);
         struct wa_fit fit;
-        enum wa_status status = solid ? settle(experiment, &sample, values, error) : WA_OK;
-        if (status == WA_OK) {
-            status = wa_fit_run(experiment, &sample, &options, values, &fit, error);
-        }
+        const enum wa_status status =
+            wa_fit_run(experiment, &sample, &options, values, &fit, error);
         if (status != WA_OK) {
             return status;
         }
@@ -72,35 +85,55 @@ enum wa_status wa_refit(const struct wa_inquiry *inquiry, const struct wa_experi
             *refit = (struct wa_refit){.log_evidence = evidence, .base = base};
             refit->value = index >= 0 ? fit.parameters[index].value : NAN;
             refit->u = index >= 0 ? fit.parameters[index].u : NAN;
+            refit->explains = explains(experiment, &fit);
         }
         wa_fit_free(&fit);
     }
     return WA_OK;
 }
 
-static enum wa_status weigh_refit(const struct wa_inquiry *inquiry,
-                                  const struct wa_experiment *experiment,
-                                  enum wa_parameter_kind kind, double start, bool solid,
-                                  struct wa_suspicion *suspicion, struct wa_error *error)
+static void keep(const struct wa_inquiry *inquiry, const struct wa_refit *refit,
+                 enum wa_parameter_kind kind, struct wa_suspicion *suspicion)
 {
-    struct wa_refit refit;
-    const enum wa_status status =
-        wa_refit(inquiry, experiment, kind, start, solid, 0, &refit, error);
-    const double odds = refit.log_evidence - inquiry->log_evidence;
-    if (status == WA_OK && isfinite(odds) && (!suspicion->weighed || odds > suspicion->statistic)) {
+    const double odds = refit->log_evidence - inquiry->log_evidence;
+    if (isfinite(odds) && (!suspicion->weighed || odds > suspicion->statistic)) {
         suspicion->weighed = true;
         suspicion->statistic = odds;
         suspicion->log_evidence = odds;
-        suspicion->value = refit.value;
-        suspicion->u = refit.u;
+        suspicion->value = refit->value;
+        suspicion->u = refit->u;
+        suspicion->explains = refit->explains;
         suspicion->parameter = kind;
+    }
+}
+
+/* Where strong acid or base was taken to be beside the acid, the fault may be the whole reason for
+ * it: it is tried with that and without. */
+static enum wa_status weigh_refit(const struct wa_inquiry *inquiry,
+                                  const struct wa_experiment *experiment,
+                                  enum wa_parameter_kind kind, const struct wa_refit_start *start,
+                                  struct wa_suspicion *suspicion, struct wa_error *error)
+{
+    struct wa_experiment pure = *experiment;
+    struct wa_refit refit;
+    enum wa_status status = wa_refit(inquiry, experiment, kind, start, 0, &refit, error);
+    if (status == WA_OK) {
+        keep(inquiry, &refit, kind, suspicion);
+    }
+    if (status == WA_OK && experiment->excess_u > 0.0) {
+        pure.excess_u = 0.0;
+        status = wa_refit(inquiry, &pure, kind, start, 0, &refit, error);
+        if (status == WA_OK) {
+            keep(inquiry, &refit, kind, suspicion);
+        }
     }
     return status;
 }
 
 /* Priors of the faults: how large they are when they happen (our own choice, common practice). */
 static const double wrong_offset_u = 0.4;
-static const double wrong_slope_u = 0.06;
+static const double wrong_slope = 0.92; /* a worn electrode falls short, it does not exceed */
+static const double wrong_slope_u = 0.04;
 static const struct wa_prior much_carbonate = {.mean = -2.8, .u = 0.5};   /* about 6 % */
 static const struct wa_prior little_carbonate = {.mean = -4.6, .u = 0.4}; /* about 1 % */
 static const double drift_u = 0.3;
@@ -110,6 +143,9 @@ static const double dissolves = 0.3; /* of the sample, when it does not all diss
 static const double ln_dissolves_u = 0.6;
 static const size_t alkaline_at_least = 5;
 
+/* Every parameter where the base left it. */
+static const struct wa_refit_start as_fitted = {.value = NAN};
+
 static enum wa_status weigh_electrode(const struct wa_inquiry *inquiry,
                                       struct wa_suspicion *suspicion, struct wa_error *error)
 {
@@ -118,11 +154,12 @@ static enum wa_status weigh_electrode(const struct wa_inquiry *inquiry,
     }
     struct wa_experiment offset = *inquiry->experiment, slope = *inquiry->experiment;
     offset.offset.u = hypot(offset.offset.u, wrong_offset_u);
+    slope.slope.mean *= wrong_slope;
     slope.slope.u = hypot(slope.slope.u, wrong_slope_u);
     const enum wa_status status =
-        weigh_refit(inquiry, &offset, WA_PARAMETER_OFFSET, NAN, false, suspicion, error);
+        weigh_refit(inquiry, &offset, WA_PARAMETER_OFFSET, &as_fitted, suspicion, error);
     return status == WA_OK
-               ? weigh_refit(inquiry, &slope, WA_PARAMETER_SLOPE, NAN, false, suspicion, error)
+               ? weigh_refit(inquiry, &slope, WA_PARAMETER_SLOPE, &as_fitted, suspicion, error)
                : status;
 }
 
@@ -139,12 +176,14 @@ static enum wa_status weigh_carbonate(const struct wa_inquiry *inquiry,
     much.ln_carbonate.u = much_carbonate.u;
     little.ln_carbonate.mean = fmax(little_carbonate.mean, little.ln_carbonate.mean);
     little.ln_carbonate.u = little_carbonate.u;
+    const struct wa_refit_start from_much = {.value = much.ln_carbonate.mean};
+    const struct wa_refit_start from_little = {.value = little.ln_carbonate.mean};
     struct wa_suspicion without = {.weighed = false};
-    enum wa_status status = weigh_refit(inquiry, &much, WA_PARAMETER_LN_CARBONATE,
-                                        much.ln_carbonate.mean, false, suspicion, error);
+    enum wa_status status =
+        weigh_refit(inquiry, &much, WA_PARAMETER_LN_CARBONATE, &from_much, suspicion, error);
     if (status == WA_OK) {
-        status = weigh_refit(inquiry, &little, WA_PARAMETER_LN_CARBONATE, little.ln_carbonate.mean,
-                             false, &without, error);
+        status =
+            weigh_refit(inquiry, &little, WA_PARAMETER_LN_CARBONATE, &from_little, &without, error);
     }
     suspicion->statistic -= without.statistic;
     suspicion->weighed = suspicion->weighed && without.weighed;
@@ -166,9 +205,8 @@ static enum wa_status weigh_uptake(const struct wa_inquiry *inquiry, struct wa_s
     enum wa_status status = WA_OK;
     for (int i = 0; status == WA_OK && i < 2; i++) {
         /* From nearly none: a start with too much carbonate finds no way back. */
-        const double start = fault.ln_uptake.mean - (i == 0 ? 3.0 : 0.7);
-        status =
-            weigh_refit(inquiry, &with, WA_PARAMETER_LN_UPTAKE, start, false, suspicion, error);
+        const struct wa_refit_start start = {.value = fault.ln_uptake.mean - (i == 0 ? 3.0 : 0.7)};
+        status = weigh_refit(inquiry, &with, WA_PARAMETER_LN_UPTAKE, &start, suspicion, error);
     }
     return status;
 }
@@ -179,27 +217,28 @@ static enum wa_status weigh_drift(const struct wa_inquiry *inquiry, struct wa_su
     struct wa_experiment with = *inquiry->experiment;
     const struct wa_fault fault = {.drift = {.mean = 0.0, .u = drift_u}, .course = inquiry->course};
     with.fault = &fault;
-    return weigh_refit(inquiry, &with, WA_PARAMETER_DRIFT, NAN, false, suspicion, error);
+    return weigh_refit(inquiry, &with, WA_PARAMETER_DRIFT, &as_fitted, suspicion, error);
 }
 
 static enum wa_status weigh_precipitate(const struct wa_inquiry *inquiry,
                                         struct wa_suspicion *suspicion, struct wa_error *error)
 {
-    static const double starts[] = {0.35, 0.6};
+    static const double dissolved[] = {0.35, 0.35, 0.6};
+    static const double pK_shift[] = {0.0, 0.4, -0.4};
     struct wa_experiment with = *inquiry->experiment;
-    if (inquiry->plain_count == 0) {
+    if (inquiry->neutral_count == 0) {
         return WA_OK;
     }
-    const struct wa_fit *plain = &inquiry->plain[0]->fit;
-    const int index = wa_fit_find(plain, WA_PARAMETER_LN_AMOUNT, 0, 0);
-    const double ln_concentration = plain->parameters[index].value - with.ln_volume.mean;
+    const double ln_concentration =
+        ln_whole_amount(&with, inquiry->neutral[0]) - with.ln_volume.mean;
     const struct wa_fault fault = {
         .ln_solubility = {.mean = ln_concentration + log(dissolves), .u = ln_dissolves_u}};
     with.fault = &fault;
     enum wa_status status = WA_OK;
-    for (size_t i = 0; status == WA_OK && i < sizeof starts / sizeof starts[0]; i++) {
-        status = weigh_refit(inquiry, &with, WA_PARAMETER_LN_SOLUBILITY,
-                             ln_concentration + log(starts[i]), true, suspicion, error);
+    for (size_t i = 0; status == WA_OK && i < sizeof dissolved / sizeof dissolved[0]; i++) {
+        const struct wa_refit_start start = {
+            .value = ln_concentration + log(dissolved[i]), .pK_shift = pK_shift[i], .solid = true};
+        status = weigh_refit(inquiry, &with, WA_PARAMETER_LN_SOLUBILITY, &start, suspicion, error);
     }
     return status;
 }

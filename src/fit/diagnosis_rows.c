@@ -34,7 +34,9 @@ static enum wa_status try_alteration(const struct wa_inquiry *inquiry,
         .step_row = alteration->row,
         .step_end = alteration->end};
     with.fault = &fault;
-    return wa_refit(inquiry, &with, WA_PARAMETER_VOLUME_STEP, NAN, false, iterations, refit, error);
+    with.excess_u = 0.0;
+    const struct wa_refit_start start = {.value = NAN};
+    return wa_refit(inquiry, &with, WA_PARAMETER_VOLUME_STEP, &start, iterations, refit, error);
 }
 
 /* The written additions on both sides of a row's volume. */
@@ -141,6 +143,7 @@ static void keep(const struct wa_inquiry *inquiry, const struct alteration *alte
         suspicion->log_evidence = odds;
         suspicion->value = refit->value;
         suspicion->u = refit->u;
+        suspicion->explains = refit->explains;
         suspicion->row = alteration->row;
         suspicion->which = which;
     }
@@ -256,6 +259,7 @@ static enum wa_status weigh_regular(const struct wa_inquiry *inquiry,
         suspicion->log_evidence = WA_FAULT_CERTAIN;
         suspicion->value = usual;
         suspicion->u = 0.0;
+        suspicion->explains = true;
         suspicion->row = row;
         suspicion->which = WA_FAULT_IN_SERIES;
     }

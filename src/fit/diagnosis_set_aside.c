@@ -95,6 +95,7 @@ void wa_weigh_set_aside(const struct wa_inquiry *inquiry, struct wa_suspicion *s
                 suspicion->log_evidence = WA_FAULT_CERTAIN;
                 suspicion->value = sign * misread_mL;
                 suspicion->row = i;
+                suspicion->explains = true;
                 suspicion->which = WA_FAULT_SET_ASIDE;
             }
         }

@@ -166,5 +166,8 @@ enum wa_status wa_fill_findings(const struct wa_identification *work, struct wa_
     if (status == WA_OK && work->study.count > 0) {
         status = find_faults(work, result, error);
     }
+    if (status == WA_OK) {
+        status = wa_find_titrant_doubt(work, result, error);
+    }
     return status;
 }

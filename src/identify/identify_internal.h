@@ -65,6 +65,10 @@ enum wa_status wa_fill_parameters(const struct wa_identification *work, struct w
 enum wa_status wa_fill_mixture(const struct wa_identification *work, struct wa_result *result,
                                struct wa_error *error) WA_MUST_USE;
 
+/** A titrant that was stronger or weaker than noted, when the mass shows it. */
+enum wa_status wa_find_titrant_doubt(const struct wa_identification *work, struct wa_result *result,
+                                     struct wa_error *error) WA_MUST_USE;
+
 /** The verdict, and why data are unfit when they are. */
 enum wa_status wa_fill_verdict(const struct wa_identification *work, struct wa_result *result,
                                struct wa_error *error) WA_MUST_USE;

@@ -7,8 +7,71 @@
 #include <stdlib.h>
 #include <string.h>
 
-static const double usable_noise = 0.25; /* pH; beyond it no model describes the readings */
-static const size_t named_at_most = 4;   /* forms spelled out in the sentence */
+static const double usable_noise = 0.25;  /* pH; beyond it no model describes the readings */
+static const double jump_strength = 1e-8; /* K times c, common practice */
+static const double dilute = 2e-3;        /* mol/L; more sample would help below it */
+static const size_t points_wanted = 4;
+static const size_t named_at_most = 4; /* forms spelled out in the sentence */
+
+/* The last proton that the run shows: its constant against the titrant, and the concentration at
+ * its equivalence point. */
+static void say_no_jump(const struct wa_experiment *experiment, const struct wa_generic *best,
+                        const struct wa_volume_estimate *end, struct wa_text *reasons)
+{
+    const bool base = experiment->titrant_is_base;
+    const int shown = best->shown > 0 ? best->shown : 1;
+    const int step = base ? best->lost + shown - 1 : best->lost - shown;
+    const int constant = wa_fit_find(&best->fit, WA_PARAMETER_PK, 0, step);
+    const int amount = wa_fit_find(&best->fit, WA_PARAMETER_LN_AMOUNT, 0, 0);
+    if (constant < 0 || amount < 0) {
+        wa_text_append(reasons, ": the curve shows no jump");
+        return;
+    }
+    const double pKa = best->fit.parameters[constant].value;
+    const double pKw = best->fit.titration.medium.pKw;
+    const double total_L = exp(experiment->ln_volume.mean) + 1e-3 * end->volume_mL;
+    const double concentration = exp(best->fit.parameters[amount].value) / total_L;
+    const double strength = concentration * pow(10.0, base ? -pKa : pKa - pKw);
+    wa_text_append(reasons, ": the curve shows no jump");
+    if (strength < jump_strength) {
+        wa_text_append(reasons,
+                       ". K times c is about %.0e (pKa about %.1f, %.1e mol/L at the equivalence "
+                       "point), and a jump needs about %.0e: %s",
+                       strength, pKa, concentration, jump_strength,
+                       concentration < dilute ? "take more sample and a stronger titrant"
+                       : base                 ? "the acid is too weak to be titrated in water"
+                                              : "the base is too weak to be titrated in water");
+    } else {
+        wa_text_append(reasons, ", though the constants found would allow one: the points are too "
+                                "far apart or scatter too much");
+    }
+}
+
+/* Stopped early: at least as many protons as the titrant has met are there. */
+static void say_stopped(const struct wa_identification *work,
+                        const struct wa_experiment *experiment, struct wa_text *reasons)
+{
+    const double last_mL = experiment->volume_mL[experiment->count - 1];
+    const double met = experiment->equivalents * exp(experiment->ln_titrant.mean) * 1e-3 * last_mL;
+    wa_text_append(reasons,
+                   ": the titration stops at %.2f mL, before the first equivalence point. What "
+                   "still follows: the sample holds more than %.3g mmol of %s",
+                   last_mL, 1e3 * met, experiment->titrant_is_base ? "acidic protons" : "base");
+    if (work->mass.known) {
+        wa_text_append(reasons, ", its equivalent mass is below %.0f g/mol",
+                       work->mass.mass_g / met);
+    }
+    wa_text_append(reasons, "; go on until the pH has jumped and settled");
+}
+
+static size_t points_about(const struct wa_experiment *experiment, double volume_mL)
+{
+    size_t count = 0;
+    for (size_t p = 0; p < experiment->count; p++) {
+        count += fabs(experiment->volume_mL[p] - volume_mL) < 0.1 * volume_mL ? 1 : 0;
+    }
+    return count;
+}
 
 /* Why the data are unfit, appended as half sentences; nothing when they are fit. */
 static void unfit_reasons(const struct wa_identification *work, const struct wa_result *result,
@@ -20,9 +83,11 @@ static void unfit_reasons(const struct wa_identification *work, const struct wa_
         wa_text_append(reasons, "no acid-base model can be fitted to these points");
         return;
     }
-    const struct wa_fit *fit = &work->study.generic[0].fit;
+    const struct wa_generic *best = &work->study.generic[0];
+    const struct wa_fit *fit = &best->fit;
+    /* A run that does not get as far as half of its first proton shows none: that one counts. */
     const struct wa_volume_estimate end =
-        wa_equivalence_by_fit(experiment, fit, work->study.generic[0].shown);
+        wa_equivalence_by_fit(experiment, fit, best->shown > 0 ? best->shown : 1);
     const double u = end.u_mL / end.volume_mL;
     if (fit->noise_reading > usable_noise) {
         wa_text_append(reasons,
@@ -32,13 +97,19 @@ static void unfit_reasons(const struct wa_identification *work, const struct wa_
     } else if (u > work->amount_limit) {
         wa_text_append(reasons, "the equivalence volume is only known to %.0f %%", 100.0 * u);
         const double last = experiment->volume_mL[experiment->count - 1];
+        const size_t about = points_about(experiment, end.volume_mL);
         if (curve->inflection_count == 0 && end.volume_mL > last) {
-            wa_text_append(reasons, ": the titration stops before the first equivalence point");
+            say_stopped(work, experiment, reasons);
+        } else if (about < points_wanted) {
+            wa_text_append(reasons,
+                           ": only %zu of the %zu points lie within 10 %% of it (%.2f mL); add "
+                           "readings there",
+                           about, experiment->count, end.volume_mL);
         } else if (curve->inflection_count == 0) {
-            wa_text_append(reasons, ": the curve shows no jump, the reaction is not complete "
-                                    "enough at this dilution");
+            say_no_jump(experiment, best, &end, reasons);
         } else {
-            wa_text_append(reasons, ": too few points, or too much scatter, about the jump");
+            wa_text_append(reasons, ": the readings scatter too much about the jump at %.2f mL",
+                           end.volume_mL);
         }
     }
 }
