@@ -111,6 +111,23 @@ static double log_prior_of(int protons, bool hidden, int step_count)
            lgamma(step_count + 1.0);
 }
 
+/* Start where the same acid with another charge ended: the charge shifts the constants by activity
+ * coefficients and nothing else. */
+static enum wa_status fit_like_sibling(const struct wa_experiment *experiment,
+                                       const struct wa_proton_study *study,
+                                       struct wa_generic *generic, struct wa_error *error)
+{
+    const struct wa_generic *last = study->count > 0 ? &study->generic[study->count - 1] : NULL;
+    double start[WA_PARAMETERS_MAX];
+    if (last == NULL || last->step_count != generic->step_count || last->lost != generic->lost) {
+        return WA_OK;
+    }
+    for (int i = 0; i < last->fit.parameter_count; i++) {
+        start[i] = last->fit.parameters[i].value;
+    }
+    return wa_fit_run(experiment, &generic->sample, NULL, start, &generic->fit, error);
+}
+
 /* Fit one generic acid and keep it when it converged. */
 static enum wa_status try_generic(const struct wa_experiment *experiment,
                                   const struct wa_curve *curve, int step_count, int lost,
@@ -122,7 +139,11 @@ static enum wa_status try_generic(const struct wa_experiment *experiment,
     const int protons = experiment->titrant_is_base ? step_count - lost : lost;
     generic->log_prior = log_prior_of(protons, step_count > protons, step_count);
     wa_generic_sample(experiment, step_count, lost, charge, &generic->sample);
-    const enum wa_status status = fit_generic(experiment, curve, generic, error);
+    enum wa_status status = fit_like_sibling(experiment, study, generic, error);
+    if (status == WA_OK && !generic->fit.converged) {
+        wa_fit_free(&generic->fit);
+        status = fit_generic(experiment, curve, generic, error);
+    }
     *log_evidence = -INFINITY;
     if (status == WA_OK && generic->fit.converged) {
         *log_evidence = generic->fit.log_evidence + generic->log_prior;
