@@ -56,8 +56,16 @@ struct wa_experiment {
     int weak_step_count;
     double weak_count; /**< molecules of it in one formula unit of titrant */
     double weak_pK[WA_PROTONS_MAX];
+    /** Next replicate of the series, or NULL. What a series shares (constants, titrant, carbonate,
+     * electrode, Davies coefficient, and the amount per mass where masses are noted) is fitted
+     * jointly; the rest is each run's own. */
+    const struct wa_experiment *next;
+    double ln_mass; /**< ln of the titrated mass in g, NaN when it is not known */
     const struct wa_fault *fault; /**< borrowed: a fault that is weighed, NULL in ordinary fits */
 };
+
+/** Most runs of one series. */
+#define WA_SERIES_MAX 16
 
 /** One acid system in a sample model. */
 struct wa_model_part {
@@ -119,16 +127,18 @@ struct wa_fit {
     int parameter_count;
     double *covariance; /**< parameter_count squared, row by row */
     bool converged;
-    double log_likelihood;         /**< normalised, in the space of the readings */
-    double log_evidence;           /**< by Laplace's approximation, noise levels included */
-    double noise_reading;          /**< pH */
-    double noise_volume;           /**< mL */
-    double misfit;                 /**< root mean square of the residuals in their own u */
-    double ionic_strength;         /**< mean over the buffered points */
-    double *model;                 /**< reading that the model expects */
-    double *residual;              /**< (measured - model) in standard uncertainties */
-    double *outlier;               /**< probability that the row is an outlier */
-    struct wa_titration titration; /**< the composition at the best parameters */
+    double log_likelihood;                 /**< normalised, in the space of the readings */
+    double log_evidence;                   /**< by Laplace's approximation, noise levels included */
+    double log_evidence_of[WA_SERIES_MAX]; /**< of each run of a series, given those before it */
+    int run_count;                         /**< runs of the series that were fitted */
+    double noise_reading;                  /**< pH */
+    double noise_volume;                   /**< mL */
+    double misfit;                         /**< root mean square of the residuals in their own u */
+    double ionic_strength;                 /**< mean over the buffered points */
+    double *model;                         /**< reading that the model expects */
+    double *residual;                      /**< (measured - model) in standard uncertainties */
+    double *outlier;                       /**< probability that the row is an outlier */
+    struct wa_titration titration;         /**< the composition at the best parameters */
 };
 
 /** How a fit may be limited. Zero-initialised means the defaults. */
@@ -154,7 +164,8 @@ enum wa_status wa_experiment_collect(const struct wa_run *run, const struct wa_c
 void wa_experiment_free(struct wa_experiment *experiment);
 
 /**
- * Fit one sample model.
+ * Fit one sample model, to every run of the series that begins with `experiment`. The points'
+ * model, residuals and outliers are those of the first run.
  * @param[in]  start  values to start from, in the order of the parameters that
  *                    wa_fit_parameters gives, or NULL for the prior means
  * @param[out] fit    to be freed with wa_fit_free; fit->converged tells whether it can be used

@@ -166,7 +166,7 @@ enum wa_status wa_experiment_collect(const struct wa_run *run, const struct wa_c
                                      struct wa_experiment *experiment, struct wa_error *error)
 {
     const size_t count = run->point_count;
-    *experiment = (struct wa_experiment){.count = count};
+    *experiment = (struct wa_experiment){.count = count, .ln_mass = NAN};
     experiment->volume_mL = calloc(count, sizeof *experiment->volume_mL);
     experiment->reading = calloc(count, sizeof *experiment->reading);
     experiment->line = calloc(count, sizeof *experiment->line);

@@ -54,6 +54,20 @@ enum wa_status wa_model_evaluate(const struct wa_experiment *experiment,
                                  int count, struct wa_point_model *points, double *jacobian,
                                  struct wa_error *error) WA_MUST_USE;
 
+/** A joint prior of all parameters of a fit, instead of their own. */
+struct wa_joint_prior {
+    const struct wa_parameter *parameters; /**< with their marginal priors */
+    const double *precision;               /**< inverse of the correlations, count squared */
+    double log_determinant;                /**< ln of the determinant of the precision */
+};
+
+/** Fit one run alone; `joint` NULL takes each parameter's own prior. */
+enum wa_status wa_fit_single(const struct wa_experiment *experiment,
+                             const struct wa_sample_model *sample,
+                             const struct wa_fit_options *options, const double *start,
+                             const struct wa_joint_prior *joint, struct wa_fit *fit,
+                             struct wa_error *error) WA_MUST_USE;
+
 /** Variance of one reading under the noise levels, volume error carried through the slope. */
 double wa_noise_variance(const struct wa_noise *noise, const struct wa_point_model *point);
 

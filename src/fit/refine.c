@@ -45,12 +45,14 @@ struct work {
     gsl_vector *evaluated_at; /* deviations that points and jacobian belong to */
     bool evaluated;
     gsl_matrix *information;
+    gsl_matrix *prior; /* precision of the deviations before the data */
     gsl_vector *scratch;
     gsl_vector *step;
     gsl_vector *trial;
     struct wa_noise noise;
     double bluntness; /* factor on both noise levels while a fit from afar sharpens its weights */
     double log_determinant;
+    double log_determinant_prior;
 };
 
 static size_t hinge_count(const struct wa_sample_model *sample)
@@ -127,7 +129,7 @@ static double weigh(struct work *work)
 static bool inform(struct work *work)
 {
     const size_t count = (size_t)work->count;
-    gsl_matrix_set_identity(work->information);
+    gsl_matrix_memcpy(work->information, work->prior);
     for (size_t p = 0; p < work->experiment->count; p++) {
         for (size_t i = 0; i < count; i++) {
             const double entry = work->jacobian[p * count + i] * work->parameters[i].prior.u;
@@ -177,8 +179,7 @@ static void expect_squares(struct work *work)
 static void gradient(const struct work *work, gsl_vector *slope)
 {
     const size_t count = (size_t)work->count;
-    gsl_vector_memcpy(slope, work->deviation);
-    gsl_vector_scale(slope, -1.0);
+    gsl_blas_dsymv(CblasLower, -1.0, work->prior, work->deviation, 0.0, slope);
     for (size_t p = 0; p < work->experiment->count; p++) {
         const double pull =
             work->precision[p] * (work->experiment->reading[p] - work->points[p].expected);
@@ -197,10 +198,19 @@ static void gradient(const struct work *work, gsl_vector *slope)
     }
 }
 
+/* Squared length of deviations in the metric of the prior. */
+static double prior_square(const struct work *work, const gsl_vector *deviation)
+{
+    double square;
+    gsl_blas_dsymv(CblasLower, 1.0, work->prior, deviation, 0.0, work->scratch);
+    gsl_blas_ddot(work->scratch, deviation, &square);
+    return square;
+}
+
 /* The frozen objective at the parameters evaluated last. */
 static double objective(const struct work *work)
 {
-    double sum = 0.0, square;
+    double sum = 0.0;
     for (size_t p = 0; p < work->experiment->count; p++) {
         const double residual = work->experiment->reading[p] - work->points[p].expected;
         sum -= 0.5 * work->precision[p] * residual * residual;
@@ -212,8 +222,7 @@ static double objective(const struct work *work)
             sum -= 0.5 * residual * residual;
         }
     }
-    gsl_blas_ddot(work->evaluated_at, work->evaluated_at, &square);
-    return sum - 0.5 * square;
+    return sum - 0.5 * prior_square(work, work->evaluated_at);
 }
 
 /* The part of a step that keeps every parameter within its longest step. */
@@ -336,11 +345,8 @@ static double log_prior_of_noise(const struct wa_prior *prior, double level)
 /* Laplace: the priors' normalisation and the Gaussian integral cancel but for the determinants. */
 static double log_evidence(struct work *work, double log_likelihood)
 {
-    double sum = log_likelihood;
-    for (int i = 0; i < work->count; i++) {
-        const double deviation = gsl_vector_get(work->deviation, (size_t)i);
-        sum -= 0.5 * deviation * deviation;
-    }
+    double sum = log_likelihood - 0.5 * prior_square(work, work->deviation) +
+                 0.5 * work->log_determinant_prior;
     for (size_t hinge = 0; hinge < hinge_count(work->sample); hinge++) {
         int low, high;
         if (hinge_pair(work, hinge, &low, &high)) {
@@ -426,12 +432,14 @@ static bool allocate_work(size_t points, size_t count, struct work *work)
     work->evaluated_at = gsl_vector_calloc(count);
     work->scratch = gsl_vector_calloc(count);
     work->information = gsl_matrix_calloc(count, count);
+    work->prior = gsl_matrix_calloc(count, count);
     work->step = gsl_vector_calloc(count);
     work->trial = gsl_vector_calloc(count);
     return work->points != NULL && work->jacobian != NULL && work->precision != NULL &&
            work->square != NULL && work->inlier != NULL && work->value != NULL &&
            work->deviation != NULL && work->evaluated_at != NULL && work->scratch != NULL &&
-           work->information != NULL && work->step != NULL && work->trial != NULL;
+           work->information != NULL && work->prior != NULL && work->step != NULL &&
+           work->trial != NULL;
 }
 
 static void free_work(struct work *work)
@@ -446,6 +454,7 @@ static void free_work(struct work *work)
     gsl_vector_free(work->evaluated_at);
     gsl_vector_free(work->scratch);
     gsl_matrix_free(work->information);
+    gsl_matrix_free(work->prior);
     gsl_vector_free(work->step);
     gsl_vector_free(work->trial);
 }
@@ -463,10 +472,22 @@ static void start_noise(const struct wa_experiment *experiment, bool from_afar,
     }
 }
 
-enum wa_status wa_fit_run(const struct wa_experiment *experiment,
-                          const struct wa_sample_model *sample,
-                          const struct wa_fit_options *options, const double *start,
-                          struct wa_fit *fit, struct wa_error *error)
+static void set_prior(const struct wa_joint_prior *joint, struct work *work)
+{
+    gsl_matrix_set_identity(work->prior);
+    work->log_determinant_prior = joint != NULL ? joint->log_determinant : 0.0;
+    for (size_t i = 0; joint != NULL && i < work->prior->size1; i++) {
+        for (size_t j = 0; j < work->prior->size2; j++) {
+            gsl_matrix_set(work->prior, i, j, joint->precision[i * work->prior->size2 + j]);
+        }
+    }
+}
+
+enum wa_status wa_fit_single(const struct wa_experiment *experiment,
+                             const struct wa_sample_model *sample,
+                             const struct wa_fit_options *options, const double *start,
+                             const struct wa_joint_prior *joint, struct wa_fit *fit,
+                             struct wa_error *error)
 {
     /* GSL's default handler would end the program; every status is looked at here instead. */
     gsl_set_error_handler_off();
@@ -474,8 +495,12 @@ enum wa_status wa_fit_run(const struct wa_experiment *experiment,
                                                                      : default_iterations;
     const double settled =
         options != NULL && options->settled > 0.0 ? options->settled : default_settled;
-    *fit = (struct wa_fit){.parameter_count = 0};
+    *fit = (struct wa_fit){.run_count = 1};
     fit->parameter_count = wa_fit_parameters(experiment, sample, fit->parameters);
+    if (joint != NULL) {
+        memcpy(fit->parameters, joint->parameters,
+               (size_t)fit->parameter_count * sizeof fit->parameters[0]);
+    }
     struct work work = {.experiment = experiment,
                         .sample = sample,
                         .parameters = fit->parameters,
@@ -486,6 +511,7 @@ enum wa_status wa_fit_run(const struct wa_experiment *experiment,
         wa_fit_free(fit);
         return wa_fail_memory(error);
     }
+    set_prior(joint, &work);
     for (int i = 0; start != NULL && i < work.count; i++) {
         const struct wa_prior *prior = &fit->parameters[i].prior;
         gsl_vector_set(work.deviation, (size_t)i, (start[i] - prior->mean) / prior->u);
@@ -495,6 +521,7 @@ enum wa_status wa_fit_run(const struct wa_experiment *experiment,
     fit->converged = iterate(&work, most, settled, from_afar);
     if (work.evaluated && isfinite(work.log_determinant)) {
         store(&work, fit);
+        fit->log_evidence_of[0] = fit->log_evidence;
     } else {
         fit->converged = false;
     }

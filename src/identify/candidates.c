@@ -230,8 +230,10 @@ enum wa_status wa_fill_candidates(const struct wa_identification *work, struct w
     result->not_in_table = work->match.not_in_table;
     result->forms_considered = work->match.forms_considered;
     result->forms_fitted = work->match.models_fitted;
-    for (size_t i = 0; status == WA_OK && i < work->match.candidate_count &&
-                       result->candidate_count < WA_CANDIDATES_MAX;
+    /* Of runs that contradict each other the joint fit means nothing. */
+    for (size_t i = 0;
+         status == WA_OK && !work->replicates_disagree && i < work->match.candidate_count &&
+         result->candidate_count < WA_CANDIDATES_MAX;
          i++) {
         const struct wa_candidate *candidate = &work->match.candidates[i];
         if (i >= listed_at_least && candidate->probability < least_listed) {

@@ -75,7 +75,7 @@ static enum wa_status collect(const struct wa_identification *work, struct wa_re
             return status;
         }
     }
-    return WA_OK;
+    return wa_link_replicates(result, error);
 }
 
 /* Charge of the acid's species as weighed: of the first acid system of the form. */
@@ -189,6 +189,15 @@ static enum wa_status compute(struct wa_identification *work, struct wa_result *
     struct wa_experiment *experiment = &result->experiments[0];
     work->mass = wa_titrated_mass_of(&result->runs.runs[0].conditions);
     enum wa_status status = explain(work, experiment, &result->curves[0], error);
+    if (status == WA_OK) {
+        status = wa_check_replicates(work, result, error);
+    }
+    if (status == WA_OK && work->replicate_left_out) {
+        wa_proton_study_free(&work->study);
+        wa_explanations_free(&work->explanations);
+        work->mass = wa_titrated_mass_of(&result->runs.runs[0].conditions);
+        status = explain(work, experiment, &result->curves[0], error);
+    }
     if (status != WA_OK || work->study.count == 0) {
         return status;
     }

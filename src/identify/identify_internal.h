@@ -23,6 +23,8 @@ struct wa_identification {
     struct wa_match match;
     char *compared[2]; /**< names of a comparison, cut at their commas */
     bool matched;
+    bool replicates_disagree; /**< two, and nothing tells which is wrong */
+    bool replicate_left_out;
     double charge_weight[WA_START_CHARGES]; /**< share of the candidates by start charge */
 };
 
@@ -68,6 +70,16 @@ enum wa_status wa_fill_mixture(const struct wa_identification *work, struct wa_r
 /** A titrant that was stronger or weaker than noted, when the mass shows it. */
 enum wa_status wa_find_titrant_doubt(const struct wa_identification *work, struct wa_result *result,
                                      struct wa_error *error) WA_MUST_USE;
+
+/** Link the experiments into one series; WA_ERROR_INPUT for runs that cannot be replicates. */
+enum wa_status wa_link_replicates(struct wa_result *result, struct wa_error *error) WA_MUST_USE;
+
+/**
+ * Whether the replicates agree. One of three or more that does not is left out of the series, and
+ * the study must be made again; two that do not agree support no answer.
+ */
+enum wa_status wa_check_replicates(struct wa_identification *work, struct wa_result *result,
+                                   struct wa_error *error) WA_MUST_USE;
 
 /** The verdict, and why data are unfit when they are. */
 enum wa_status wa_fill_verdict(const struct wa_identification *work, struct wa_result *result,

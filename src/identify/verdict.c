@@ -77,6 +77,10 @@ static size_t points_about(const struct wa_experiment *experiment, double volume
 static void unfit_reasons(const struct wa_identification *work, const struct wa_result *result,
                           struct wa_text *reasons)
 {
+    if (work->replicates_disagree) {
+        wa_text_append(reasons, "the two replicates contradict each other");
+        return;
+    }
     const struct wa_curve *curve = &result->curves[0];
     const struct wa_experiment *experiment = &result->experiments[0];
     if (work->study.count == 0) {
