@@ -195,6 +195,18 @@ enum wa_status wa_fit_expect(const struct wa_experiment *experiment,
 /** Index of a parameter, or -1. */
 int wa_fit_find(const struct wa_fit *fit, enum wa_parameter_kind kind, int part, int step);
 
+/**
+ * Readings that a fit expects at further volumes, and their covariance: of its parameters, and the
+ * noise on the diagonal.
+ * @param[in]  experiment  may differ from the fitted one in temperature, volume and background
+ * @param[out] reading     `count` values
+ * @param[out] covariance  count squared, row by row
+ */
+enum wa_status wa_fit_predict(const struct wa_experiment *experiment,
+                              const struct wa_sample_model *sample, const struct wa_fit *fit,
+                              const double *volume_mL, size_t count, double *reading,
+                              double *covariance, struct wa_error *error) WA_MUST_USE;
+
 /** Free what a fit owns. NULL is allowed. */
 void wa_fit_free(struct wa_fit *fit);
 

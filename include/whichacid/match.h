@@ -9,7 +9,7 @@
 #include "whichacid/weights.h"
 
 /** Prior weight of "not in the table". */
-#define WA_NOT_IN_TABLE_PRIOR 0.1
+#define WA_NOT_IN_TABLE_PRIOR 0.2
 
 /** Share that goes to "not in the table" when nobody said what the titrant was. */
 #define WA_TITRANT_DOUBT 0.1

@@ -23,8 +23,7 @@ static void candidates(struct wa_text *out, const struct wa_amount_result *resul
         wa_text_append(out, "\nNo form of the table has this equivalent mass.\n");
         return;
     }
-    wa_text_append(out, "\nForms with this equivalent mass, within two standard uncertainties (by "
-                        "mass alone)\n");
+    wa_text_append(out, "\nForms with this equivalent mass, within two standard uncertainties\n");
     for (size_t i = 0; i < result->candidate_count; i++) {
         const struct wa_mass_candidate *candidate = &result->candidates[i];
         wa_text_append(out, "  ");
@@ -50,8 +49,8 @@ enum wa_status wa_amount_text(const struct wa_amount_result *result, bool with_c
         char value[64], expanded[64];
         wa_quantity_format(value, sizeof value, budget->value, budget->u);
         wa_quantity_format(expanded, sizeof expanded, budget->value, 2.0 * budget->u);
-        wa_text_append(&out, "%s%s: %s %s   (k = 2: %s)\n", i > 0 ? "\n" : "", budget->name, value,
-                       budget->unit, expanded);
+        wa_text_append(&out, "%s%s: %s %s\n  expanded (k = 2): %s\n", i > 0 ? "\n" : "",
+                       budget->name, value, budget->unit, expanded);
         bench_budget_text(&out, budget, &result->monte_carlo[i]);
         say_largest(&out, budget);
     }

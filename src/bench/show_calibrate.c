@@ -77,7 +77,7 @@ enum wa_status wa_electrode_text(const struct wa_electrode *electrode,
         figures(&out, after);
         verdict(&out, after, limits);
         readings(&out, after);
-        wa_text_append(&out, "\nDrift: slope %+.2f ± %.2f %%, offset %+.4f ± %.4f pH: %s.\n",
+        wa_text_append(&out, "\nDrift: slope %+.2f ± %.2f %%, offset %+.4f ± %.4f pH:\n  %s.\n",
                        100.0 * drift.slope, 100.0 * drift.slope_u, drift.offset, drift.offset_u,
                        drift.significant ? "more than the uncertainties explain"
                                          : "within the uncertainties");

@@ -85,16 +85,15 @@ static void verdict(struct wa_text *out, const struct wa_plan *plan)
 
 static void steps(struct wa_text *out, const struct wa_plan *plan)
 {
-    wa_text_append(out,
-                   "\n  pKa     volume/mL  K        left     pH     jump      jump     dpH/dV\n"
-                   "                               over    there  (0.1 %%)   (1 %%)    per mL\n");
+    wa_text_append(out, "\n  pKa    mL      K        left     pH     jump   jump   dpH/dV\n"
+                        "                          over     there  0.1 %%  1 %%    per mL\n");
     for (int i = 0; i < plan->step_count; i++) {
         const struct wa_plan_step *s = &plan->steps[i];
-        wa_text_append(out, "  %-7.2f %-10.2f %-8.2g %-7.2g%% %-6.2f %-9.2f %-8.2f %-8.3g %s\n",
+        wa_text_append(out, "  %-6.2f %-7.2f %-8.2g %-7.2g%% %-6.2f %-6.2f %-6.2f %-7.2g %s\n",
                        s->pKa, s->volume_mL, s->K, 100.0 * s->unconverted, s->pH, s->jump,
                        s->wide_jump, s->steepness,
                        s->visible    ? "end point"
-                       : s->complete ? "no jump of its own"
+                       : s->complete ? "no own jump"
                                      : "incomplete");
     }
 }

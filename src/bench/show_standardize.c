@@ -15,8 +15,8 @@ static void heading(struct wa_text *out, const struct wa_standardization *work)
     wa_text_append(out, "%s: %s mol/L\n", work->titrant->name, value);
     wa_text_append(out, "  expanded (k = 2): %s mol/L", expanded);
     if (budget->k95 > 2.3) {
-        wa_text_append(out, "; for 95 %% take k = %.1f: few degrees of freedom (%.1f)", budget->k95,
-                       budget->degrees_of_freedom);
+        wa_text_append(out, "\n  for 95 %% take k = %.1f: few degrees of freedom (%.1f)",
+                       budget->k95, budget->degrees_of_freedom);
     }
     wa_text_append(out, "\n  against %s%s\n", work->standard->name,
                    work->second ? ", by way of a first titrant" : "");

@@ -4,9 +4,9 @@
 #include <math.h>
 #include <stdlib.h>
 
-static const double scatter_most = 0.06;       /* pH */
-static const double runs_chance_least = 0.001; /* of so few runs */
-static const double outliers_most = 0.12;      /* of the points */
+static const double scatter_most = 0.06;      /* pH */
+static const double runs_chance_least = 1e-6; /* of so few runs */
+static const double outliers_most = 0.12;     /* of the points */
 
 /* ln of the amount that a fit of this base would need if the strong acid or base beside it were
  * acid as well. */

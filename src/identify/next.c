@@ -2,11 +2,18 @@
 #include "identify/identify_internal.h"
 
 #include "base/text.h"
+#include "whichacid/expected.h"
 
 #include <math.h>
 #include <stdio.h>
 #include <stdlib.h>
 #include <string.h>
+
+/* An observation is worth a line from this share of the missing bits, and from so many bits. */
+static const double told_from = 0.1;
+static const double least_bits = 0.03;
+static const double worth_asking = 0.3; /* bits missing */
+static const size_t suggested_most = 5;
 
 static enum wa_status add_next(struct wa_result *result, char *sentence, const char *separates,
                                struct wa_error *error)
@@ -30,29 +37,90 @@ static enum wa_status add_next(struct wa_result *result, char *sentence, const c
     return WA_OK;
 }
 
-/* Two listed candidates with different melting points, far enough apart to be told. */
-static enum wa_status suggest_melting(const struct wa_identification *work,
-                                      struct wa_result *result, struct wa_error *error)
+/* What to do, without what it is expected to bring. */
+static char *task_of(const struct wa_expected *expected)
 {
-    for (size_t i = 0; i < work->match.candidate_count && i < 5; i++) {
-        for (size_t j = i + 1; j < work->match.candidate_count && j < 5; j++) {
-            const struct wa_candidate *x = &work->match.candidates[i];
-            const struct wa_candidate *y = &work->match.candidates[j];
-            const struct wa_form *a = &work->table->forms[x->form];
-            const struct wa_form *b = &work->table->forms[y->form];
-            if (y->probability < 0.02 || !(fabs(a->melting_point_C - b->melting_point_C) > 5.0)) {
-                continue;
-            }
-            char separates[160];
-            snprintf(separates, sizeof separates, "%s; %s", a->key, b->key);
-            return add_next(result,
-                            wa_sentence("Take a melting point: %s melts at about %.0f \u00b0C, "
-                                        "%s at about %.0f \u00b0C.",
-                                        a->name, a->melting_point_C, b->name, b->melting_point_C),
-                            separates, error);
-        }
+    switch (expected->kind) {
+    case WA_EXPECTED_MASS:
+        return wa_sentence("Weigh the sample, for its molar mass");
+    case WA_EXPECTED_POINTS:
+        return wa_sentence("Take %d more points between pH %.1f and %.1f (%.2f to %.2f mL)",
+                           expected->points, expected->pH[0], expected->pH[1],
+                           expected->volume_mL[0], expected->volume_mL[1]);
+    case WA_EXPECTED_CONCENTRATED:
+        return wa_sentence("Titrate again with sample and titrant five times as concentrated");
+    case WA_EXPECTED_TEMPERATURE:
+        return wa_sentence("Titrate again at %.0f \u00b0C", expected->temperature_C);
+    case WA_EXPECTED_IONIC_STRENGTH:
+        return wa_sentence("Titrate again in 0.3 mol/L potassium chloride");
+    case WA_EXPECTED_OBSERVATION:
+        break;
     }
-    return WA_OK;
+    const char *name = wa_observation_name(expected->observation);
+    return expected->observation == WA_OBSERVED_MELTING_POINT
+               ? wa_sentence(
+                     "Take the melting point (then --observed \"melting point: ... \u00b1 1 "
+                     "\u00b0C\")")
+           : expected->observation == WA_OBSERVED_LOSS_ON_DRYING
+               ? wa_sentence("Dry a weighed part to constant mass (then --observed \"loss on "
+                             "drying: ... \u00b1 0.2 %%\")")
+               : wa_sentence("Make the spot test for %s (then --observed \"%s: yes\" or no)", name,
+                             name);
+}
+
+static enum wa_status add_expected(const struct wa_expectations *all,
+                                   const struct wa_expected *expected, struct wa_result *result,
+                                   struct wa_error *error)
+{
+    char *task = task_of(expected);
+    if (task == NULL) {
+        return wa_fail_memory(error);
+    }
+    char *sentence =
+        wa_sentence("%s: expected to bring %.2f of the %.2f bits that are missing, and to bring "
+                    "the set from %.0f to about %.1f.",
+                    task, expected->bits, all->bits, all->set_size, expected->set_size);
+    free(task);
+    const enum wa_status status = add_next(result, sentence, result->verdict.forms, error);
+    if (status == WA_OK) {
+        struct wa_result_next *next = &result->next_tests[result->next_test_count - 1];
+        next->expected_bits = expected->bits;
+        next->expected_set = expected->set_size;
+    }
+    return status;
+}
+
+/* The observations that are expected to tell most; one spot test is enough at a time. */
+static enum wa_status suggest_expected(const struct wa_identification *work,
+                                       struct wa_result *result, struct wa_error *error)
+{
+    struct wa_expectations expectations;
+    bool spot = false;
+    enum wa_status status =
+        wa_match_expect(&result->experiments[0], &work->study, &work->mass, work->table,
+                        &work->match, work->threshold, &expectations, error);
+    if (status != WA_OK) {
+        return status;
+    }
+    result->missing_bits = expectations.bits;
+    if (expectations.bits < worth_asking) {
+        return WA_OK;
+    }
+    const size_t first = result->next_test_count;
+    for (size_t i = 0; status == WA_OK && i < expectations.count &&
+                       result->next_test_count < first + suggested_most;
+         i++) {
+        const struct wa_expected *expected = &expectations.list[i];
+        const bool is_spot = expected->kind == WA_EXPECTED_OBSERVATION &&
+                             expected->observation >= WA_OBSERVED_SODIUM;
+        if (expected->bits < told_from * expectations.bits || expected->bits < least_bits ||
+            (is_spot && spot)) {
+            continue;
+        }
+        spot = spot || is_spot;
+        status = add_expected(&expectations, expected, result, error);
+    }
+    return status;
 }
 
 static enum wa_status suggest_for_unfit(const struct wa_identification *work,
@@ -84,6 +152,7 @@ enum wa_status wa_fill_next_tests(const struct wa_identification *work, struct w
 {
     const struct wa_verdict *verdict = &result->verdict;
     enum wa_status status = WA_OK;
+    result->missing_bits = NAN;
     if (verdict->kind == WA_VERDICT_UNFIT) {
         return suggest_for_unfit(work, result, error);
     }
@@ -93,14 +162,8 @@ enum wa_status wa_fill_next_tests(const struct wa_identification *work, struct w
                                       "constants then count."),
                           "", error);
     }
-    if (status == WA_OK && !work->mass.known) {
-        status = add_next(result,
-                          wa_sentence("Weigh the sample: its molar mass separates most acids of "
-                                      "like pKa, and salts and hydrates from the free acid."),
-                          verdict->forms, error);
-    }
-    if (status == WA_OK && verdict->kind == WA_VERDICT_NARROWED) {
-        status = suggest_melting(work, result, error);
+    if (status == WA_OK && work->matched) {
+        status = suggest_expected(work, result, error);
     }
     if (status == WA_OK) {
         status = add_next(result,

@@ -65,7 +65,9 @@ static void write_next(struct report_writer *writer, const struct wa_result *res
             report_heading(writer, "WHAT TO DO NEXT");
         }
         const struct wa_result_next *next = &result->next_tests[i];
-        bool separates = next->separates != NULL && next->separates[0] != '\0';
+        const char *last = i > 0 ? result->next_tests[i - 1].separates : NULL;
+        bool separates = next->separates != NULL && next->separates[0] != '\0' &&
+                         (last == NULL || strcmp(last, next->separates) != 0);
         report_paragraph(writer, "  - ", 4, "%s%s%s%s",
                          next->sentence != NULL ? next->sentence : "",
                          separates ? " (separates: " : "", separates ? next->separates : "",
