@@ -48,7 +48,8 @@ struct screening {
 
 /* One form on trial. */
 struct trial {
-    const struct wa_group *group;
+    const struct wa_group *group; /* NULL: everything dissolves */
+    bool saturated;               /* some station was beyond the solubility */
     const struct wa_sample_model *sample;
     struct wa_system systems[WA_PARTS_MAX];
     int count; /* unknowns */
@@ -240,13 +241,13 @@ static bool first_amount(const struct screening *screening, struct trial *trial)
 /* Where the form's uncharged species is beyond its solubility, what is dissolved follows from the
  * solubility and not from the amount: replace charge and derivatives by that. The constants' part
  * is left out, which a screening can bear. */
-static void saturate(const struct trial *trial, const struct station *at, double amount,
-                     double *charge, double *by_pH, double *row)
+static void saturate(struct trial *trial, const struct station *at, double amount, double *charge,
+                     double *by_pH, double *row)
 {
     const struct wa_group *group = trial->group;
     const struct wa_model_part *part = &trial->sample->parts[0];
     double fraction[WA_PROTONS_MAX + 1], variance;
-    if (!isfinite(group->solubility) || trial->sample->part_count == 0) {
+    if (group == NULL) {
         return;
     }
     wa_system_fractions(&trial->systems[0], at->activity, at->gamma, fraction);
@@ -254,6 +255,7 @@ static void saturate(const struct trial *trial, const struct station *at, double
     if (amount * part->count <= dissolved) {
         return;
     }
+    trial->saturated = true;
     const double lost = mean_lost(fraction, part->step_count, &variance);
     const double mean = part->charge - lost;
     const double spectators = amount * trial->sample->spectator_charge[0];
@@ -347,9 +349,10 @@ static double step(struct trial *trial, double *move)
     return log_determinant;
 }
 
-static double screen_group(const struct screening *screening, struct wa_group *group)
+static double screen_once(const struct screening *screening, const struct wa_group *group,
+                          bool with_solid, double *ln_amount, bool *saturated)
 {
-    struct trial trial = {.group = group, .sample = &group->sample};
+    struct trial trial = {.group = with_solid ? group : NULL, .sample = &group->sample};
     double log_determinant = NAN, move = INFINITY;
     set_systems(&trial);
     if (!first_amount(screening, &trial)) {
@@ -373,9 +376,28 @@ static double screen_group(const struct screening *screening, struct wa_group *g
         strain += i < CONSTANTS ? 0.0 : square;
     }
     sum += wa_log_strain(strain, trial.count - CONSTANTS);
-    group->ln_amount = trial.ln_amount;
+    *ln_amount = trial.ln_amount;
+    *saturated = trial.saturated;
     sum -= 0.5 * log_determinant;
     return isfinite(sum) ? sum : -INFINITY;
+}
+
+/* Screened as dissolved and, where the table tells a solubility, with a solid: the better counts.
+ */
+static double screen_group(const struct screening *screening, struct wa_group *group)
+{
+    bool saturated = false;
+    double with_ln_amount;
+    const double dissolved = screen_once(screening, group, false, &group->ln_amount, &saturated);
+    if (!isfinite(group->solubility) || group->sample.part_count == 0) {
+        return dissolved;
+    }
+    const double solid = screen_once(screening, group, true, &with_ln_amount, &saturated);
+    if (saturated && solid > dissolved) {
+        group->ln_amount = with_ln_amount;
+        return solid;
+    }
+    return dissolved;
 }
 
 enum wa_status wa_groups_screen(const struct wa_experiment *experiment, const struct wa_fit *best,
