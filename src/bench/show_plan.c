@@ -50,11 +50,19 @@ static void say_why_not(struct wa_text *out, const struct wa_plan *plan)
         return;
     }
     say(out, 0,
-        "It cannot work: the reaction of %s with %s has an equilibrium constant of %.2g, and about "
-        "%.0e is needed. With equal amounts %.3g %% would be left unreacted, and the pH moves by "
-        "%.2f only while the volume goes from 1 %% short to 1 %% over.",
-        name_of(plan), small(plan->titrant->name).text, best->K, WA_COMPLETE_K,
+        "%s: the reaction of %s with %s has an equilibrium constant of %.2g%s about %.0e is "
+        "needed. With equal amounts %.3g %% would be left unreacted, and the pH moves by %.2f only "
+        "while the volume goes from 1 %% short to 1 %% over.",
+        best->complete ? "There is no end point" : "It cannot work", name_of(plan),
+        small(plan->titrant->name).text, best->K,
+        best->complete ? "; in strong solutions" : ", and", WA_COMPLETE_K,
         100.0 * best->unconverted, best->wide_jump);
+    if (best->complete) {
+        say(out, 0,
+            "A fit of the whole curve can still tell constant and amount, less exactly; a stronger "
+            "solution helps.");
+        return;
+    }
     say(out, 0, "%s",
         plan->titrant->is_weak
             ? "A weak acid and a weak base do not use each other up: take a strong titrant."
