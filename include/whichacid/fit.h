@@ -60,7 +60,7 @@ struct wa_experiment {
      * electrode, Davies coefficient, and the amount per mass where masses are noted) is fitted
      * jointly; the rest is each run's own. */
     const struct wa_experiment *next;
-    double ln_mass; /**< ln of the titrated mass in g, NaN when it is not known */
+    double ln_mass;               /**< ln of the titrated mass in g, NaN when it is not known */
     const struct wa_fault *fault; /**< borrowed: a fault that is weighed, NULL in ordinary fits */
 };
 

@@ -96,9 +96,9 @@ enum wa_status wa_groups_priors(const struct wa_table *table,
 bool wa_form_is_meant(const struct wa_table *table, int form, const char *name);
 
 /**
- * ln of the factor by which a fit's evidence changes when some electrodes of unknown calibration are
- * allowed to be far off: the prior of the offset becomes a mixture of the one fitted with and a wide
- * one. Zero when the calibration was noted.
+ * ln of the factor by which a fit's evidence changes when some electrodes of unknown calibration
+ * are allowed to be far off: the prior of the offset becomes a mixture of the one fitted with and a
+ * wide one. Zero when the calibration was noted.
  */
 double wa_log_stray_electrode(const struct wa_experiment *experiment, const struct wa_fit *fit);
 
