@@ -42,6 +42,10 @@ struct wa_purity {
     double found_ln_s; /**< half-normal below 1, of this scale */
 };
 
+/** ln of the evidence of a substance that resembles the listed ones, by their fits. */
+double wa_groups_log_relatives(const struct wa_table *table, const struct wa_titrated_mass *mass,
+                               const struct wa_purity *purity, const struct wa_group_list *list);
+
 /** The groups of a finished match, borrowed. */
 const struct wa_group_list *wa_match_groups(const struct wa_match *match);
 
@@ -96,9 +100,9 @@ enum wa_status wa_groups_priors(const struct wa_table *table,
 bool wa_form_is_meant(const struct wa_table *table, int form, const char *name);
 
 /**
- * ln of the factor by which a fit's evidence changes when some electrodes of unknown calibration are
- * allowed to be far off: the prior of the offset becomes a mixture of the one fitted with and a wide
- * one. Zero when the calibration was noted.
+ * ln of the factor by which a fit's evidence changes when some electrodes of unknown calibration
+ * are allowed to be far off: the prior of the offset becomes a mixture of the one fitted with and a
+ * wide one. Zero when the calibration was noted.
  */
 double wa_log_stray_electrode(const struct wa_experiment *experiment, const struct wa_fit *fit);
 
