@@ -31,15 +31,19 @@ static double log_not_in_table(const struct wa_experiment *experiment,
 }
 
 /* What speaks against every single substance of the table: one that is not in it, or two acids. */
-static double log_unknown(const struct wa_experiment *experiment, const struct wa_group_list *list,
-                          const struct wa_proton_study *study, const struct wa_titrated_mass *mass,
+static double log_unknown(const struct wa_experiment *experiment, const struct wa_table *table,
+                          const struct wa_group_list *list, const struct wa_proton_study *study,
+                          const struct wa_titrated_mass *mass,
                           const struct wa_match_options *options)
 {
     const struct wa_generic *best = &study->generic[0];
     const int index = wa_fit_find(&best->fit, WA_PARAMETER_LN_AMOUNT, 0, 0);
     const struct wa_parameter *amount = &best->fit.parameters[index];
-    const double one = log(list->not_in_table) + log_not_in_table(experiment, study, mass) +
-                       list->unknown_observed;
+    const struct wa_purity purity = wa_purity_default();
+    const double any = log(1.0 - WA_RELATIVE_SHARE) + log_not_in_table(experiment, study, mass);
+    const double relative =
+        log(WA_RELATIVE_SHARE) + wa_groups_log_relatives(table, mass, &purity, list);
+    const double one = log(list->not_in_table) + wa_log_sum(any, relative) + list->unknown_observed;
     if (options == NULL || options->log_two_acids == 0.0) {
         return one;
     }
@@ -107,8 +111,9 @@ enum wa_status wa_match_run(const struct wa_experiment *experiment,
         return status;
     }
     match->not_in_table_prior = list->not_in_table;
-    match->log_unknown =
-        list->not_in_table > 0.0 ? log_unknown(experiment, list, study, mass, options) : -INFINITY;
+    match->log_unknown = list->not_in_table > 0.0
+                             ? log_unknown(experiment, table, list, study, mass, options)
+                             : -INFINITY;
     normalise(match);
     if (experiment->titrant_assumed && list->not_in_table > 0.0) {
         doubt_titrant(match);

@@ -42,6 +42,10 @@ struct wa_purity {
     double found_ln_s; /**< half-normal below 1, of this scale */
 };
 
+/** ln of the evidence of a substance that resembles the listed ones, by their fits. */
+double wa_groups_log_relatives(const struct wa_table *table, const struct wa_titrated_mass *mass,
+                               const struct wa_purity *purity, const struct wa_group_list *list);
+
 /** The groups of a finished match, borrowed. */
 const struct wa_group_list *wa_match_groups(const struct wa_match *match);
 

@@ -18,6 +18,9 @@ enum { BINS = 10, LISTED_MOST = 40 };
 
 static const double outside_share = 0.2; /* the stated prior of "not in the table" */
 static const double with_mass_share = 0.8;
+static const double dissolved_part = 0.8; /* of the solubility: analysts weigh what dissolves */
+static const double usual_titrant_mL = 20.0;
+static const double least_concentration = 0.004; /* mol/L; what dissolves less is not titrated */
 
 /* Sums over all stated probabilities. */
 struct tally {
@@ -76,6 +79,32 @@ static bool is_modelled(const struct wa_table *table, const struct wa_form *form
     return modelled;
 }
 
+/* Whether a form's first system is the truth's, or another of its enantiomers. */
+static bool is_related(const struct wa_table *table, const struct wa_form *form,
+                       const struct wa_form *truth)
+{
+    const char *own = first_system(table, form), *other = first_system(table, truth);
+    if (own == NULL || other == NULL) {
+        return false;
+    }
+    const int a = wa_table_find_acid(table, own), b = wa_table_find_acid(table, other);
+    const char *group = table->acids[a].group;
+    return a == b || (group[0] != '\0' && strcmp(group, table->acids[b].group) == 0);
+}
+
+/* Least solubility among the forms of one system: what may come out during a titration. */
+static double least_solubility(const struct wa_table *table, const struct wa_form *truth)
+{
+    double least = INFINITY;
+    for (size_t f = 0; f < table->form_count; f++) {
+        const struct wa_form *form = &table->forms[f];
+        if (is_related(table, form, truth) && form->solubility_mol_L > 0.0) {
+            least = fmin(least, form->solubility_mol_L);
+        }
+    }
+    return least;
+}
+
 /* A form by the prior: even over systems, then over their forms. */
 static const struct wa_form *draw_form(const struct wa_table *table)
 {
@@ -91,7 +120,7 @@ static const struct wa_form *draw_form(const struct wa_table *table)
                 chosen = form;
             }
         }
-        if (chosen != NULL) {
+        if (chosen != NULL && least_solubility(table, chosen) > least_concentration) {
             return chosen;
         }
     }
@@ -121,13 +150,17 @@ static void perturb(struct wa_table *table, double saved[][WA_PROTONS_MAX], int 
     }
 }
 
-static void faults(struct wa_simulation_options *options, const char *key)
+/* `most` is the concentration up to which everything dissolves, mol/L. */
+static void faults(struct wa_simulation_options *options, const char *key, double most)
 {
     wa_simulation_defaults(options);
     options->forms[0] = key;
     options->form_count = 1;
     options->solution_volume = with_u(20.0 + 40.0 * uniform(), 0.05);
-    options->titrant_concentration = with_u(between_logs(0.02, 0.5), 0.0);
+    const double asked = between_logs(0.02, 0.5);
+    options->titrant_concentration = with_u(
+        fmin(asked, dissolved_part * most * options->solution_volume.value / usual_titrant_mL),
+        0.0);
     options->titrant_concentration.u = 0.003 * options->titrant_concentration.value;
     options->electrode_slope = with_u(1.0, 0.006);
     options->electrode_offset = with_u(0.0, 0.03);
@@ -136,18 +169,17 @@ static void faults(struct wa_simulation_options *options, const char *key)
     options->noise_reading = between_logs(0.003, 0.03);
     options->noise_volume = between_logs(0.003, 0.03);
     options->point_count = (int)(15.0 + 60.0 * uniform());
-    options->dissolved = true;
     options->seed = 1 + (uint32_t)(uniform() * 4e9);
 }
 
 /* The run as text, with the mass that the analyst would have weighed: more than acts, by the
  * purity; or without one. */
-static enum wa_status write_run(const struct wa_table *table, const char *key, char **text,
-                                size_t *length, struct wa_error *error)
+static enum wa_status write_run(const struct wa_table *table, const struct wa_form *truth,
+                                char **text, size_t *length, struct wa_error *error)
 {
     struct wa_simulation_options options;
     struct wa_simulation simulation;
-    faults(&options, key);
+    faults(&options, truth->key, least_solubility(table, truth));
     enum wa_status status = wa_simulate(table, &options, &simulation, error);
     if (status != WA_OK) {
         return status;
@@ -216,6 +248,11 @@ static void count_run(struct tally *tally, const struct wa_table *table,
         if (i == 0 && result->verdict.kind == WA_VERDICT_IDENTIFIED) {
             tally->identified++;
             tally->wrong_identified += right ? 0 : 1;
+            if (!right) {
+                printf("wrong: %s (%s the table) taken for %s with %.4f, not in the table %.4f\n",
+                       truth->key, inside ? "in" : "outside", result->candidates[i].key,
+                       result->candidates[i].probability, result->not_in_table);
+            }
         }
         found = found || (right && i < fmax((double)result->verdict.form_count, 1.0));
     }
@@ -227,19 +264,6 @@ static void count_run(struct tally *tally, const struct wa_table *table,
         tally->outside_told +=
             result->verdict.kind == WA_VERDICT_NOT_IN_TABLE || result->not_in_table >= 0.05 ? 1 : 0;
     }
-}
-
-/* Whether a form's first system is the truth's, or another of its enantiomers. */
-static bool is_related(const struct wa_table *table, const struct wa_form *form,
-                       const struct wa_form *truth)
-{
-    const char *own = first_system(table, form), *other = first_system(table, truth);
-    if (own == NULL || other == NULL) {
-        return false;
-    }
-    const int a = wa_table_find_acid(table, own), b = wa_table_find_acid(table, other);
-    const char *group = table->acids[a].group;
-    return a == b || (group[0] != '\0' && strcmp(group, table->acids[b].group) == 0);
 }
 
 /* Take what the truth is out of what is compared, or put it back. */
@@ -262,7 +286,7 @@ static enum wa_status trial(struct wa_table *table, double saved[][WA_PROTONS_MA
     char *text = NULL;
     size_t length = 0;
     perturb(table, saved, 1);
-    enum wa_status status = write_run(table, truth->key, &text, &length, error);
+    enum wa_status status = write_run(table, truth, &text, &length, error);
     perturb(table, saved, -1);
     if (status != WA_OK) {
         return status == WA_ERROR_MEMORY ? status : WA_OK; /* no titration of this form */
