@@ -254,7 +254,7 @@ static void count_run(struct tally *tally, const struct wa_table *table,
                        result->candidates[i].probability, result->not_in_table);
             }
         }
-        found = found || (right && i < fmax((double)result->verdict.form_count, 1.0));
+        found = found || (right && (i < result->verdict.form_count || i == 0));
     }
     score(tally, result->not_in_table, !inside);
     if (inside) {
