@@ -218,11 +218,14 @@ static double form_charge(const struct trial *trial, const struct station *at, d
     return charge;
 }
 
-/* Amount by least squares with the constants as they stand; false when no positive one fits. */
+/* Amount by least squares with the constants as they stand; false when no positive one fits. Where
+ * a solid may have been, only the last quarter of the points is sure to have everything dissolved.
+ */
 static bool first_amount(const struct screening *screening, struct trial *trial)
 {
     double cross = 0.0, square = 0.0;
-    for (size_t p = 0; p < screening->count; p++) {
+    const size_t first = trial->group != NULL ? screening->count - (screening->count + 3) / 4 : 0;
+    for (size_t p = first; p < screening->count; p++) {
         const struct station *at = &screening->stations[p];
         double by_pH, by_constant[UNKNOWNS_MAX];
         const double charge = form_charge(trial, at, &by_pH, by_constant);
