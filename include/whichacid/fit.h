@@ -30,6 +30,7 @@ struct wa_experiment {
     double *volume_mL; /**< blank subtracted */
     double *reading;   /**< pH as the electrode showed it */
     long *line;        /**< lines in the file */
+    size_t grouping;   /**< readings averaged in each point: 1 but for very long runs */
     bool titrant_is_base;
     double pivot;         /**< where slope and offset are not correlated, less 7; 0 unless a
                                calibration tells their correlation */

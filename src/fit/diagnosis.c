@@ -53,22 +53,29 @@ static void choose_bases(struct wa_inquiry *inquiry)
                                  study->generic[0].fit.log_evidence + study->generic[0].log_prior);
 }
 
+/* Time since the first reading, at a point of the experiment. */
+static double time_at(const struct wa_inquiry *inquiry, size_t point)
+{
+    const struct wa_experiment *e = inquiry->experiment;
+    const size_t grouping = e->grouping > 0 ? e->grouping : 1;
+    return inquiry->run->points[point * grouping].time_s - inquiry->run->points[0].time_s;
+}
+
 /* How much of the run has passed at each point, and of its alkaline part: by time where every
  * point has one, else by the order of the points. */
 static void set_course(struct wa_inquiry *inquiry)
 {
-    const struct wa_point *points = inquiry->run->points;
     const struct wa_experiment *e = inquiry->experiment;
     const size_t last = e->count - 1;
-    inquiry->timed = points[last].time_s > points[0].time_s;
+    inquiry->timed = time_at(inquiry, last) > 0.0;
     for (size_t p = 1; p < e->count; p++) {
-        inquiry->timed = inquiry->timed && points[p].time_s >= points[p - 1].time_s;
+        inquiry->timed = inquiry->timed && time_at(inquiry, p) >= time_at(inquiry, p - 1);
     }
     double alkaline = 0.0;
     for (size_t p = 0; p < e->count; p++) {
-        const double now = inquiry->timed ? points[p].time_s - points[0].time_s : (double)p;
+        const double now = inquiry->timed ? time_at(inquiry, p) : (double)p;
         const double before = p == 0           ? 0.0
-                              : inquiry->timed ? points[p - 1].time_s - points[0].time_s
+                              : inquiry->timed ? time_at(inquiry, p - 1)
                                                : (double)p - 1.0;
         const bool open = e->reading[p] > alkaline_limit;
         alkaline += open ? now - before : 0.0;

@@ -22,6 +22,7 @@ static const double default_reading_noise = 0.012; /* pH */
 static const double default_ln_reading_noise_u = 0.9;
 static const double default_ln_volume_noise_u = 0.7;
 static const double noted_ln_noise_u = 0.25;
+static const size_t most_points = 600;
 static const double uncalibrated_offset_u = 1.0; /* pH */
 static const double carbonate_ln_u = 0.8;        /* root mean square about twice the median */
 
@@ -146,27 +147,44 @@ static void set_titrant(const struct wa_table *table, const struct wa_titrant *t
     }
 }
 
+static double reading_of(const struct wa_run *run, const struct wa_point *point, double mV_per_pH,
+                         double mV_sign)
+{
+    return run->reading_kind == WA_READING_MV ? 7.0 - mV_sign * point->reading / mV_per_pH
+                                              : point->reading;
+}
+
+/* Neighbours are averaged in groups when there are more points than a fit can use: a group spans
+ * far less volume than any feature of the curve. */
 static void set_points(const struct wa_run *run, double mV_per_pH, double mV_sign,
                        struct wa_experiment *experiment)
 {
     const struct wa_noted *blank = &run->conditions.blank;
     const double blank_mL = blank->known ? blank->quantity.value : 0.0;
-    for (size_t p = 0; p < run->point_count; p++) {
-        const struct wa_point *point = &run->points[p];
-        experiment->volume_mL[p] = fmax(point->volume_mL - blank_mL, 0.0);
-        experiment->line[p] = point->line;
-        experiment->reading[p] = run->reading_kind == WA_READING_MV
-                                     ? 7.0 - mV_sign * point->reading / mV_per_pH
-                                     : point->reading;
+    for (size_t p = 0; p < experiment->count; p++) {
+        const size_t first = p * experiment->grouping;
+        const size_t rest = run->point_count - first;
+        const size_t size = rest < experiment->grouping ? rest : experiment->grouping;
+        double volume = 0.0, reading = 0.0;
+        for (size_t i = first; i < first + size; i++) {
+            volume += run->points[i].volume_mL;
+            reading += reading_of(run, &run->points[i], mV_per_pH, mV_sign);
+        }
+        experiment->volume_mL[p] = fmax(volume / (double)size - blank_mL, 0.0);
+        experiment->reading[p] = reading / (double)size;
+        experiment->line[p] = run->points[first].line;
     }
+    experiment->ln_noise_reading.mean -= 0.5 * log((double)experiment->grouping);
+    experiment->ln_noise_volume.mean -= 0.5 * log((double)experiment->grouping);
 }
 
 enum wa_status wa_experiment_collect(const struct wa_run *run, const struct wa_curve *curve,
                                      const struct wa_table *table, const struct wa_titrant *titrant,
                                      struct wa_experiment *experiment, struct wa_error *error)
 {
-    const size_t count = run->point_count;
-    *experiment = (struct wa_experiment){.count = count, .ln_mass = NAN};
+    const size_t grouping = (run->point_count + most_points - 1) / most_points;
+    const size_t count = grouping > 0 ? (run->point_count + grouping - 1) / grouping : 0;
+    *experiment = (struct wa_experiment){.count = count, .grouping = grouping, .ln_mass = NAN};
     experiment->volume_mL = calloc(count, sizeof *experiment->volume_mL);
     experiment->reading = calloc(count, sizeof *experiment->reading);
     experiment->line = calloc(count, sizeof *experiment->line);
@@ -178,7 +196,7 @@ enum wa_status wa_experiment_collect(const struct wa_run *run, const struct wa_c
     const double temperature =
         run->conditions.temperature.known ? run->conditions.temperature.quantity.value : 25.0;
     const double mV_per_pH = nernst_mV * (temperature + kelvin_offset) / reference_K;
-    const double last = count > 0 ? run->points[count - 1].volume_mL : 0.0;
+    const double last = count > 0 ? run->points[run->point_count - 1].volume_mL : 0.0;
     set_priors(run, last, in_mV ? mV_per_pH : 1.0, experiment);
     /* A glass electrode's potential falls as the pH rises; some instruments show it reversed, as
      * the titrant tells. */

@@ -32,6 +32,19 @@ static enum wa_status assume_from_run(struct wa_result *result, struct wa_error 
     return status;
 }
 
+static enum wa_status assume_grouping(struct wa_result *result, struct wa_error *error)
+{
+    const struct wa_experiment *experiment = &result->experiments[0];
+    if (experiment->grouping <= 1) {
+        return WA_OK;
+    }
+    return add_assumption(result, "grouping",
+                          wa_sentence("The run has more points than a fit can use: %zu neighbours "
+                                      "at a time are averaged for the fit.",
+                                      experiment->grouping),
+                          error);
+}
+
 static enum wa_status assume_priors(const struct wa_identification *work, struct wa_result *result,
                                     struct wa_error *error)
 {
@@ -152,6 +165,9 @@ enum wa_status wa_fill_findings(const struct wa_identification *work, struct wa_
                                 struct wa_error *error)
 {
     enum wa_status status = assume_from_run(result, error);
+    if (status == WA_OK) {
+        status = assume_grouping(result, error);
+    }
     if (status == WA_OK) {
         status = assume_priors(work, result, error);
     }
