@@ -146,6 +146,25 @@ static void other_masses_are_the_published_ones(void **state)
     compare_masses(*state, others, sizeof others / sizeof others[0]);
 }
 
+/* D. Harvey, Analytical Chemistry 2.1, LibreTexts, appendix 16.8, Recommended Primary Standards.
+ * It adds weights to more figures than IUPAC's abridged ones: 39.0983 for potassium, and 132.905
+ * for caesium where the abridged weight is 132.91, which is 0.01 in two atoms. */
+static void primary_standard_masses_are_the_published_ones(void **state)
+{
+    static const struct published_mass standards[] = {
+        {"boric-acid", 61.83, 0.006},
+        {"calcium-carbonate", 100.09, 0.006},
+        {"caesium-carbonate", 325.82, 0.015},
+        {"lithium-carbonate", 73.89, 0.006},
+        {"potassium-dihydrogen-phosphate", 136.09, 0.007},
+        {"potassium-carbonate", 138.21, 0.007},
+        {"sodium-oxalate", 134.00, 0.006},
+        {"strontium-carbonate", 147.63, 0.006},
+        {"sodium-sulfate", 142.04, 0.006},
+    };
+    compare_masses(*state, standards, sizeof standards / sizeof standards[0]);
+}
+
 /* Ways to write one formula must give one mass. Turns red when a sign, a bracket or a dot of a
  * hydrate is read wrongly. */
 static void formulas_are_read_however_they_are_written(void **state)
@@ -220,6 +239,7 @@ int main(void)
         cmocka_unit_test(reagent_masses_are_the_published_ones),
         cmocka_unit_test(amino_acid_masses_are_the_published_ones),
         cmocka_unit_test(other_masses_are_the_published_ones),
+        cmocka_unit_test(primary_standard_masses_are_the_published_ones),
         cmocka_unit_test(formulas_are_read_however_they_are_written),
         cmocka_unit_test(what_is_no_formula_is_refused),
         cmocka_unit_test(uncertainty_follows_the_atomic_weights),

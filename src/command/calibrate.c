@@ -29,7 +29,8 @@ static const char documentation[] =
     "with keys of buffers.csv or pH values, and readings in mV or pH.\n\n"
     "Examples:\n"
     "  whichacid calibrate buffers.csv\n"
-    "  whichacid calibrate buffers.csv --after later.csv --json --output electrode.json\n"
+    "  whichacid calibrate buffers.csv --after later.csv --json \\\n"
+    "    --output electrode.json\n"
     "  whichacid identify vial17.csv --electrode electrode.json\n\n"
     "Exit status: 0 an answer, also when the electrode is not accepted; 1 input that cannot be "
     "used; 2 a wrong call.";

@@ -59,7 +59,7 @@ static const struct argp_option own_options[] = {
     {"base", key_base, NULL, 0, "the unknown is a base, to be titrated with acid", 1},
     {"against", key_against, "KEY", 0, "a second candidate: can the two be told apart", 1},
     {.doc = "Titration:", .group = 2},
-    {"titrant", key_titrant, "NAME", 0, "what is in the burette (the strong one that suits)", 2},
+    {"titrant", key_titrant, "NAME", 0, "in the burette (the strong one that suits)", 2},
     {"titrant-concentration", key_concentration, "VALUE", 0,
      "with its uncertainty, such as \"0.1 ± 0.0001 mol/L\", which is assumed", 2},
     {"titrant-carbonate", key_carbonate, "VALUE", 0,

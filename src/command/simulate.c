@@ -50,8 +50,8 @@ static const char documentation[] =
     "from it. Slope, offset and carbonate without one are faults that the notes do not tell, and "
     "stand only on the lines that say what was simulated.\n\n"
     "Example:\n"
-    "  whichacid simulate citric-acid --titrant-concentration \"0.1 ± 0.0002 mol/L\" --seed 7 "
-    "--output run.csv\n"
+    "  whichacid simulate citric-acid \\\n"
+    "    --titrant-concentration \"0.1 ± 0.0002 mol/L\" --seed 7 --output run.csv\n"
     "  whichacid identify run.csv\n\n"
     "Exit status: 0 written, 1 a file that cannot be used, 2 wrong call.";
 

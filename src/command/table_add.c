@@ -77,7 +77,8 @@ static const char documentation[] =
     "Add an acid, or with --acid another form of an acid of the table, to your own folder. What "
     "the options leave open is asked for, unless name, formula and pKa are all given. Nothing is "
     "written when the check finds a mistake."
-    "\vExample: whichacid table add --name 'cacodylic acid' --formula C2H7AsO2 --pka 6.27\n"
+    "\vExample: whichacid table add --name 'cacodylic acid' \\\n"
+    "    --formula C2H7AsO2 --pka 6.27\n"
     "Then:    whichacid identify run.csv --also " DEFAULT_FOLDER;
 
 static error_t parse(int key, char *argument, struct argp_state *state)

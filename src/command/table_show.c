@@ -27,7 +27,8 @@ static const char documentation[] =
     "A page about one acid or base, found by the key, name or other name of the system or of a "
     "form: constants with their sources, species against pH, landmarks of its titration, "
     "indicators, what it may be taken for, hazards."
-    "\vExample: whichacid table show citric acid --temperature 37 --ionic-strength 0.1";
+    "\vExample: whichacid table show citric acid --temperature 37 \\\n"
+    "  --ionic-strength 0.1";
 
 static double value_of(const char *text, enum wa_dimension dimension, double low, double high,
                        struct argp_state *state)

@@ -144,8 +144,8 @@ static void append_mass(const struct wa_titrated_mass *mass, const struct wa_can
     } else if (off > 0.0 && purity > excused_purity) {
         wa_text_append(text, "; molar mass fits a purity of %.1f %%", 100.0 * purity);
     } else if (off > 0.0) {
-        wa_text_append(text, "; molar mass misses by %+.1f u: only %.0f %% would be the substance",
-                       off, 100.0 * purity);
+        wa_text_append(text, "; molar mass misses by %+.1f u: %s %.0f %% would be the substance",
+                       off, purity < 0.01 ? "less than" : "only", fmax(100.0 * purity, 1.0));
     } else {
         wa_text_append(text,
                        "; molar mass misses by %+.1f u, and no impurity of other substances "

@@ -7,6 +7,7 @@
 #include <string.h>
 
 static const double outlier_named = 0.5;
+static const size_t outliers_named = 4;
 
 static enum wa_status add_finding(struct wa_result *result, const char *code, char *sentence,
                                   struct wa_error *error)
@@ -91,8 +92,15 @@ static enum wa_status find_outliers(const struct wa_identification *work, struct
     const struct wa_experiment *experiment = &result->experiments[0];
     const struct wa_fit *fit = &work->study.generic[0].fit;
     enum wa_status status = WA_OK;
-    for (size_t p = 0; status == WA_OK && p < experiment->count; p++) {
+    size_t count = 0;
+    for (size_t p = 0; p < experiment->count; p++) {
+        count += fit->outlier[p] > outlier_named ? 1 : 0;
+    }
+    /* One more than the most is named too: it takes no more room than saying so. */
+    size_t left = count > outliers_named + 1 ? outliers_named : count;
+    for (size_t p = 0; status == WA_OK && left > 0 && p < experiment->count; p++) {
         if (fit->outlier[p] > outlier_named) {
+            left--;
             status = add_finding(
                 result, "outlier",
                 wa_sentence("Line %ld (%.2f mL, pH %.2f) does not follow the curve, which expects "
@@ -101,6 +109,14 @@ static enum wa_status find_outliers(const struct wa_identification *work, struct
                             fit->model[p]),
                 error);
         }
+    }
+    if (status == WA_OK && count > outliers_named + 1) {
+        status = add_finding(
+            result, "outlier",
+            wa_sentence("So it is with %zu more points: %zu of the %zu do not follow the curve. "
+                        "One curve through the rest may not be the right one; look at the plot.",
+                        count - outliers_named, count, experiment->count),
+            error);
     }
     return status;
 }

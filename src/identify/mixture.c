@@ -146,9 +146,10 @@ static char *two_acids_sentence(const struct wa_identification *work,
                                 size_t count)
 {
     struct wa_text text = {.bytes = NULL};
-    wa_text_append(&text, "The data prefer two %s (probability %.0f %%): ",
+    wa_text_append(&text, "The data prefer two %s (probability %s%.1f %%): ",
                    found->two_sample.parts[0].charge == 0 ? "acids" : "bases",
-                   100.0 * found->probability[WA_EXPLANATION_TWO_ACIDS]);
+                   found->probability[WA_EXPLANATION_TWO_ACIDS] > 0.999 ? "above " : "",
+                   fmin(100.0 * found->probability[WA_EXPLANATION_TWO_ACIDS], 99.9));
     append_substance(found, 0, &text);
     wa_text_append(&text, ", and ");
     append_substance(found, 1, &text);
@@ -172,10 +173,12 @@ static char *excess_sentence(const struct wa_experiment *experiment,
     const bool acid = found->excess_mol > 0.0;
     const char *what = acid ? "strong acid" : "strong base";
     const bool used_up = acid != experiment->titrant_is_base;
-    return wa_sentence("The data prefer %s beside the sample, %.3f \u00b1 %.3f mmol (probability "
-                       "%.0f %%)%s.",
-                       what, 1e3 * fabs(found->excess_mol), 1e3 * found->excess_u,
-                       100.0 * found->probability[WA_EXPLANATION_EXCESS],
+    char amount[64];
+    wa_quantity_format(amount, sizeof amount, 1e3 * fabs(found->excess_mol), 1e3 * found->excess_u);
+    return wa_sentence("The data prefer %s beside the sample, %s mmol (probability %s%.1f %%)%s.",
+                       what, amount,
+                       found->probability[WA_EXPLANATION_EXCESS] > 0.999 ? "above " : "",
+                       fmin(100.0 * found->probability[WA_EXPLANATION_EXCESS], 99.9),
                        used_up ? ": the sample is partly neutralized, or partly a salt" : "");
 }
 

@@ -77,11 +77,12 @@ static enum wa_status add_expected(const struct wa_expectations *all,
         return wa_fail_memory(error);
     }
     char *sentence =
-        wa_sentence("%s: expected to bring %.2f of the %.2f bits that are missing, and to bring "
-                    "the set from %.0f to about %.1f.",
-                    task, expected->bits, all->bits, all->set_size, expected->set_size);
+        wa_sentence("%s: expected to bring %.2f of the %.2f bits that are missing, and to leave "
+                    "about %.1f of %.0f possibilities.",
+                    task, expected->bits, all->bits, expected->set_size, all->set_size);
     free(task);
-    const enum wa_status status = add_next(result, sentence, result->verdict.forms, error);
+    const enum wa_status status = add_next(
+        result, sentence, result->verdict.form_count > 1 ? result->verdict.forms : "", error);
     if (status == WA_OK) {
         struct wa_result_next *next = &result->next_tests[result->next_test_count - 1];
         next->expected_bits = expected->bits;

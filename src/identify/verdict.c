@@ -4,6 +4,7 @@
 #include "base/text.h"
 
 #include <math.h>
+#include <stdio.h>
 #include <stdlib.h>
 #include <string.h>
 
@@ -47,17 +48,20 @@ static void say_no_jump(const struct wa_experiment *experiment, const struct wa_
     }
 }
 
-/* Stopped early: at least as many protons as the titrant has met are there. */
-static void say_stopped(const struct wa_identification *work,
+/* Stopped early: at least as many protons as the titrant has met are there, which is a number only
+ * when its concentration was noted. */
+static void say_stopped(const struct wa_identification *work, bool noted,
                         const struct wa_experiment *experiment, struct wa_text *reasons)
 {
     const double last_mL = experiment->volume_mL[experiment->count - 1];
     const double met = experiment->equivalents * exp(experiment->ln_titrant.mean) * 1e-3 * last_mL;
-    wa_text_append(reasons,
-                   ": the titration stops at %.2f mL, before the first equivalence point. What "
-                   "still follows: the sample holds more than %.3g mmol of %s",
-                   last_mL, 1e3 * met, experiment->titrant_is_base ? "acidic protons" : "base");
-    if (work->mass.known) {
+    wa_text_append(reasons, ": the titration stops at %.2f mL, before the first equivalence point",
+                   last_mL);
+    if (noted) {
+        wa_text_append(reasons, ". What still follows: the sample holds more than %.3g mmol of %s",
+                       1e3 * met, experiment->titrant_is_base ? "acidic protons" : "base");
+    }
+    if (noted && work->mass.known) {
         wa_text_append(reasons, ", its equivalent mass is below %.0f g/mol",
                        work->mass.mass_g / met);
     }
@@ -73,12 +77,20 @@ static size_t points_about(const struct wa_experiment *experiment, double volume
     return count;
 }
 
+/* Whether the readings go the other way than the titrant named can take them. */
+static bool runs_against_titrant(const struct wa_curve *curve,
+                                 const struct wa_experiment *experiment)
+{
+    const double rise = experiment->reading[experiment->count - 1] - experiment->reading[0];
+    return !curve->in_mV && (experiment->titrant_is_base ? rise < -1.0 : rise > 1.0);
+}
+
 /* Why the data are unfit, appended as half sentences; nothing when they are fit. */
 static void unfit_reasons(const struct wa_identification *work, const struct wa_result *result,
                           struct wa_text *reasons)
 {
     if (work->replicates_disagree) {
-        wa_text_append(reasons, "the two replicates contradict each other");
+        wa_text_append(reasons, "the replicates contradict each other");
         return;
     }
     const struct wa_curve *curve = &result->curves[0];
@@ -93,7 +105,13 @@ static void unfit_reasons(const struct wa_identification *work, const struct wa_
     const struct wa_volume_estimate end =
         wa_equivalence_by_fit(experiment, fit, best->shown > 0 ? best->shown : 1);
     const double u = end.u_mL / end.volume_mL;
-    if (fit->noise_reading > usable_noise) {
+    if (fit->noise_reading > usable_noise && runs_against_titrant(curve, experiment)) {
+        wa_text_append(reasons,
+                       "the pH %s although the titrant is taken for %s; check the note "
+                       "'titrant' and the columns",
+                       experiment->titrant_is_base ? "falls" : "rises",
+                       experiment->titrant_is_base ? "a base" : "an acid");
+    } else if (fit->noise_reading > usable_noise) {
         wa_text_append(reasons,
                        "the readings scatter by %.2f pH about the best model, so that this is "
                        "perhaps no acid-base titration or the columns were misread",
@@ -103,7 +121,8 @@ static void unfit_reasons(const struct wa_identification *work, const struct wa_
         const double last = experiment->volume_mL[experiment->count - 1];
         const size_t about = points_about(experiment, end.volume_mL);
         if (curve->inflection_count == 0 && end.volume_mL > last) {
-            say_stopped(work, experiment, reasons);
+            say_stopped(work, result->runs.runs[0].conditions.titrant_concentration.known,
+                        experiment, reasons);
         } else if (about < points_wanted) {
             wa_text_append(reasons,
                            ": only %zu of the %zu points lie within 10 %% of it (%.2f mL); add "
@@ -138,6 +157,16 @@ static bool is_unfit(const struct wa_identification *work, const struct wa_resul
     const bool unfit = reasons.length > 0;
     wa_text_free(&reasons);
     return unfit;
+}
+
+/* A probability in a sentence; what is nearly certain is not called certain. */
+static void format_share(char *text, size_t size, double share)
+{
+    if (share > 0.999) {
+        snprintf(text, size, "more than 99.9 %%");
+    } else {
+        snprintf(text, size, share > 0.99 ? "%.1f %%" : "%.0f %%", 100.0 * share);
+    }
 }
 
 /* How a candidate is called: with the forms that cannot be told from it. */
@@ -202,8 +231,12 @@ static char *narrowed_sentence(const struct wa_identification *work, size_t coun
     if (count > named_at_most) {
         wa_text_append(&text, " and %zu more", count - named_at_most);
     }
-    wa_text_append(&text, count == 1 ? ", but only with %.0f %%" : "; together they hold %.0f %%",
-                   100.0 * share);
+    char held[32];
+    format_share(held, sizeof held, share);
+    wa_text_append(&text, "%s%s", count == 1 ? ", but only with " : "; together they hold ", held);
+    if (count > 1 && share < threshold) {
+        wa_text_append(&text, ", less than the %.3g %% asked for", 100.0 * threshold);
+    }
     if (work->match.not_in_table > 1.0 - threshold) {
         wa_text_append(&text, ", and %.0f %% stays with a substance that is not in the table",
                        100.0 * work->match.not_in_table);
@@ -212,11 +245,20 @@ static char *narrowed_sentence(const struct wa_identification *work, size_t coun
     return text.failed ? NULL : text.bytes;
 }
 
-static char *not_in_table_sentence(const struct wa_identification *work)
+static char *not_in_table_sentence(const struct wa_identification *work, double threshold)
 {
-    return wa_sentence("No substance in the table explains these data well: with a probability of "
-                       "%.0f %% it is one that is not in the table.",
-                       100.0 * work->match.not_in_table);
+    const struct wa_match *match = &work->match;
+    char share[32];
+    format_share(share, sizeof share, match->not_in_table);
+    if (match->not_in_table >= threshold || match->candidate_count == 0) {
+        return wa_sentence("No substance in the table explains these data well: with a probability "
+                           "of %s it is one that is not in the table.",
+                           share);
+    }
+    return wa_sentence("The substance is probably one that is not in the table (%s); of those in "
+                       "it, %s comes first with %.0f %%.",
+                       share, work->table->forms[match->candidates[0].form].name,
+                       100.0 * match->candidates[0].probability);
 }
 
 /* Smallest set of candidates that holds the threshold, or as much as there is beside "not in the
@@ -247,7 +289,7 @@ enum wa_status wa_fill_verdict(const struct wa_identification *work, struct wa_r
     } else if (count == 0 || match->not_in_table > 0.5) {
         verdict->kind = WA_VERDICT_NOT_IN_TABLE;
         verdict->probability = match->not_in_table;
-        verdict->sentence = not_in_table_sentence(work);
+        verdict->sentence = not_in_table_sentence(work, work->threshold);
         verdict->forms = wa_text_copy("", 0);
     } else if (match->candidates[0].probability >= work->threshold) {
         verdict->kind = WA_VERDICT_IDENTIFIED;

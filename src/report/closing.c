@@ -68,10 +68,16 @@ static void write_next(struct report_writer *writer, const struct wa_result *res
         const char *last = i > 0 ? result->next_tests[i - 1].separates : NULL;
         bool separates = next->separates != NULL && next->separates[0] != '\0' &&
                          (last == NULL || strcmp(last, next->separates) != 0);
+        struct wa_text keys = {.bytes = NULL};
+        if (separates) {
+            report_keys(&keys, next->separates);
+            writer->text.failed = writer->text.failed || keys.failed;
+        }
+        const bool told = separates && !keys.failed;
         report_paragraph(writer, "  - ", 4, "%s%s%s%s",
-                         next->sentence != NULL ? next->sentence : "",
-                         separates ? " (separates: " : "", separates ? next->separates : "",
-                         separates ? ")" : "");
+                         next->sentence != NULL ? next->sentence : "", told ? " (separates: " : "",
+                         told ? keys.bytes : "", told ? ")" : "");
+        wa_text_free(&keys);
     }
 }
 

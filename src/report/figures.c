@@ -5,6 +5,8 @@
 #include <stdio.h>
 #include <string.h>
 
+#define KEYS_SHOWN 12
+
 void report_quantity(char *text, size_t size, double value, double u)
 {
     if (!isfinite(value)) {
@@ -12,6 +14,21 @@ void report_quantity(char *text, size_t size, double value, double u)
         return;
     }
     wa_quantity_format(text, size, value, u);
+}
+
+void report_keys(struct wa_text *text, const char *keys)
+{
+    size_t count = 1;
+    size_t shown = strlen(keys);
+    for (const char *at = strstr(keys, "; "); at != NULL; at = strstr(at + 2, "; "), count++) {
+        if (count == KEYS_SHOWN) {
+            shown = (size_t)(at - keys);
+        }
+    }
+    wa_text_append(text, "%.*s", (int)shown, keys);
+    if (count > KEYS_SHOWN) {
+        wa_text_append(text, "; and %zu more", count - KEYS_SHOWN);
+    }
 }
 
 void report_probability(char *text, size_t size, double probability)
@@ -25,6 +42,16 @@ void report_probability(char *text, size_t size, double probability)
     } else {
         snprintf(text, size, "%.1f %%", 100.0 * probability);
     }
+}
+
+void report_threshold(char *text, size_t size, const struct wa_verdict *verdict)
+{
+    char asked[32];
+    report_probability(asked, sizeof asked, verdict->threshold);
+    snprintf(text, size,
+             verdict->probability < verdict->threshold ? "below the %s that is asked for"
+                                                       : "at least %s is asked for",
+             asked);
 }
 
 void report_deviation(char *text, size_t size, double deviation)

@@ -44,11 +44,11 @@ static void write_fact(struct wa_text *page, const char *name, double value, dou
 static void write_facts(struct wa_text *rows, const struct wa_result *result)
 {
     if (isfinite(result->verdict.probability) && result->verdict.kind != WA_VERDICT_UNFIT) {
-        char share[32], asked[32];
+        char share[32], against[80];
         report_probability(share, sizeof share, result->verdict.probability);
-        report_probability(asked, sizeof asked, result->verdict.threshold);
+        report_threshold(against, sizeof against, &result->verdict);
         html_raw(rows, "<tr><th scope=\"row\">Probability</th><td>");
-        html_format(rows, "%s (at least %s is asked for)", share, asked);
+        html_format(rows, "%s (%s)", share, against);
         html_raw(rows, "</td></tr>\n");
     }
     write_fact(rows, "Molar mass", result->molar_mass, result->molar_mass_u, "g/mol");

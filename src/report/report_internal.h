@@ -77,8 +77,15 @@ void report_table_draw(struct report_writer *writer, struct report_table *table)
 /** "4.756 ± 0.012", the value alone when u is not known, "not known" when the value is not. */
 void report_quantity(char *text, size_t size, double value, double u);
 
+/** The first dozen of a list of keys parted by "; ", and how many more there are. JSON has them
+ * all. */
+void report_keys(struct wa_text *text, const char *keys);
+
 /** "98.7 %", "> 99.9 %", "< 0.1 %", "not known". */
 void report_probability(char *text, size_t size, double probability);
+
+/** "at least 95.0 % is asked for", or "below the 95.0 % that is asked for". */
+void report_threshold(char *text, size_t size, const struct wa_verdict *verdict);
 
 /** "+0.4 u", or "" when it is not known. */
 void report_deviation(char *text, size_t size, double deviation);

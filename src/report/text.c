@@ -14,6 +14,17 @@ static const char *verdict_word(enum wa_verdict_kind kind)
     return (size_t)kind < sizeof words / sizeof words[0] ? words[kind] : "unknown";
 }
 
+static void write_set(struct report_writer *writer, const struct wa_verdict *verdict)
+{
+    if (verdict->form_count > 1 && verdict->forms != NULL) {
+        struct wa_text keys = {.bytes = NULL};
+        report_keys(&keys, verdict->forms);
+        writer->text.failed = writer->text.failed || keys.failed;
+        report_paragraph(writer, "The set: ", 2, "%s", keys.failed ? "" : keys.bytes);
+        wa_text_free(&keys);
+    }
+}
+
 static void write_verdict(struct report_writer *writer, const struct wa_result *result)
 {
     const struct wa_verdict *verdict = &result->verdict;
@@ -22,18 +33,16 @@ static void write_verdict(struct report_writer *writer, const struct wa_result *
                      sentence != NULL && sentence[0] != '\0' ? sentence
                                                              : "No verdict could be reached.");
     char share[32];
-    char asked[32];
     report_probability(share, sizeof share, verdict->probability);
-    report_probability(asked, sizeof asked, verdict->threshold);
     if (verdict->kind == WA_VERDICT_UNFIT) {
         report_paragraph(writer, "", 0, "Verdict: unfit.");
     } else {
-        report_paragraph(writer, "", 0, "Verdict: %s, probability %s (at least %s is asked for).",
-                         verdict_word(verdict->kind), share, asked);
+        char against[80];
+        report_threshold(against, sizeof against, verdict);
+        report_paragraph(writer, "", 0, "Verdict: %s, probability %s (%s).",
+                         verdict_word(verdict->kind), share, against);
     }
-    if (verdict->form_count > 1 && verdict->forms != NULL) {
-        report_paragraph(writer, "The set: ", 2, "%s", verdict->forms);
-    }
+    write_set(writer, verdict);
     if (result->forms_considered > 0) {
         report_paragraph(
             writer, "", 0, "Compared: %zu forms of the table, %zu of them with every point%s%s%s.",

@@ -89,14 +89,14 @@ static enum wa_status fill_titrant(struct wa_run *run, struct wa_error *error)
                                "assumed.");
     } else if (!conditions->titrant_concentration.known) {
         status = wa_run_remark(run, error,
-                               "The titrant concentration was not noted, so no amount can be "
-                               "given.");
+                               "The titrant concentration was not noted: 0.1 mol/L within a factor "
+                               "of two is assumed, and amounts are known no better.");
     }
     if (status == WA_OK && !conditions->titrant_carbonate.known) {
         conditions->titrant_carbonate = assumed(0, carbonate_u);
         status = wa_run_remark(run, error,
                                "Carbonate in the titrant was not noted: between none and about "
-                               "1.5 %% of its alkalinity is assumed.");
+                               "1.5 %% of the alkalinity of a base is assumed.");
     } else if (!conditions->titrant_carbonate.quantity.has_u) {
         struct wa_quantity *carbonate = &conditions->titrant_carbonate.quantity;
         carbonate->u = fmax(0.5 * carbonate->value, 0.002);

@@ -26,7 +26,7 @@ static const struct wa_note_name names[] = {
     {"volume uncertainty", "0.01 mL", "standard deviation of one volume"},
     {"volume reading", "burette", "how volumes were written: total, burette or increment"},
     {"date", "2024-03-02", "when it was measured; kept and printed"},
-    {"analyst", "M. Weber", "who measured; kept and printed"},
+    {"analyst", "M. Weber", "name of who measured; kept and printed"},
 };
 
 struct other_name {
