@@ -102,20 +102,20 @@ void name_fold_plain(const char *name, size_t length, char folded[NAME_FOLD_MAX]
 }
 
 /* FNV-1a (Fowler, Noll, Vo). */
-static uint32_t hash_text(const char *text)
+static uint64_t hash_text(const char *text)
 {
     uint64_t hash = UINT64_C(14695981039346656037);
     for (; *text != '\0'; text++) {
         hash = (hash ^ (unsigned char)*text) * UINT64_C(1099511628211);
     }
-    return (uint32_t)(hash ^ (hash >> 32));
+    return hash;
 }
 
 /* Place where a name stands or would stand. */
-static size_t place_of(const struct name_index *names, uint32_t hash, const char *folded)
+static size_t place_of(const struct name_index *names, uint64_t hash, const char *folded)
 {
     size_t mask = names->capacity - 1;
-    size_t place = hash & mask;
+    size_t place = (size_t)(hash ^ (hash >> 32)) & mask;
     while (
         names->entries[place].folded != NULL &&
         (names->entries[place].hash != hash || strcmp(names->entries[place].folded, folded) != 0)) {
@@ -129,7 +129,7 @@ static size_t place_of(const struct name_index *names, uint32_t hash, const char
 static bool widen(struct name_index *names)
 {
     struct name_index wider = {.capacity =
-                                   names->capacity == 0 ? FIRST_CAPACITY : names->capacity * 2};
+                                   names->capacity == 0 ? FIRST_CAPACITY : names->capacity * 4};
     wider.entries = calloc(wider.capacity, sizeof *wider.entries);
     if (wider.entries == NULL) {
         return false;
@@ -151,12 +151,12 @@ int name_index_add(struct name_index *names, const char *folded, int index)
     if (2 * (names->count + 1) > names->capacity && !widen(names)) {
         return -2;
     }
-    uint32_t hash = hash_text(folded);
+    uint64_t hash = hash_text(folded);
     struct name_entry *entry = &names->entries[place_of(names, hash, folded)];
     if (entry->folded != NULL) {
         return entry->index;
     }
-    *entry = (struct name_entry){folded, hash, index};
+    *entry = (struct name_entry){hash, folded, index};
     names->count++;
     return -1;
 }

@@ -18,11 +18,9 @@
 
 struct arena_chunk;
 
-/* Kept small: an index is mostly empty places, and every page of it costs time when first touched.
- */
 struct name_entry {
+    uint64_t hash;
     const char *folded; /* NULL: an empty place */
-    uint32_t hash;
     int index;
 };
 
