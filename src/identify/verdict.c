@@ -11,6 +11,8 @@
 static const double usable_noise = 0.25;  /* pH; beyond it no model describes the readings */
 static const double jump_strength = 1e-8; /* K times c, common practice */
 static const double dilute = 2e-3;        /* mol/L; more sample would help below it */
+static const double share_least = 0.85;   /* of the mass weighed; below it an impurity is much */
+static const double share_most = 1.03;    /* above it no impurity explains it */
 static const size_t points_wanted = 4;
 static const size_t named_at_most = 4; /* forms spelled out in the sentence */
 
@@ -215,6 +217,16 @@ static char *identified_sentence(const struct wa_identification *work)
     append_name(work, first, &text);
     wa_text_append(&text, ", with a probability of %.1f %% among the substances considered.",
                    fmin(100.0 * first->probability, 99.9));
+    if (work->mass.known) {
+        const double measured = work->mass.mass_g / exp(first->ln_amount);
+        const double share = work->table->forms[first->form].molar_mass / measured;
+        if (share < share_least || share > share_most) {
+            wa_text_append(&text,
+                           " The mass contradicts it, though: the amount titrated would be %.0f %% "
+                           "of the mass weighed. Check the mass, the aliquot and the titrant.",
+                           100.0 * share);
+        }
+    }
     return text.failed ? NULL : text.bytes;
 }
 

@@ -157,7 +157,11 @@ void html_next_tests(struct wa_text *page, const struct wa_result *result)
         html_text(page, next->sentence);
         if (next->separates != NULL && next->separates[0] != '\0') {
             html_raw(page, "<span class=\"small\">");
-            html_format(page, "separates: %s", next->separates);
+            struct wa_text keys = {.bytes = NULL};
+            report_keys(&keys, next->separates);
+            page->failed = page->failed || keys.failed;
+            html_format(page, "separates: %s", keys.failed ? "" : keys.bytes);
+            wa_text_free(&keys);
             html_raw(page, "</span>");
         }
         html_raw(page, "</li>\n");
