@@ -63,6 +63,9 @@ enum wa_status wa_fill_candidates(const struct wa_identification *work, struct w
 enum wa_status wa_fill_parameters(const struct wa_identification *work, struct wa_result *result,
                                   struct wa_error *error) WA_MUST_USE;
 
+/** Whether the readings go the other way than the titrant named can take them. */
+bool wa_runs_against_titrant(const struct wa_curve *curve, const struct wa_experiment *experiment);
+
 /** More than one pure acid, when the data prefer it. */
 enum wa_status wa_fill_mixture(const struct wa_identification *work, struct wa_result *result,
                                struct wa_error *error) WA_MUST_USE;

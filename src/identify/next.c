@@ -128,6 +128,12 @@ static enum wa_status suggest_for_unfit(const struct wa_identification *work,
                                         struct wa_result *result, struct wa_error *error)
 {
     const struct wa_experiment *experiment = &result->experiments[0];
+    if (wa_runs_against_titrant(&result->curves[0], experiment)) {
+        return add_next(result,
+                        wa_sentence("Note the titrant that was in the burette, and see with "
+                                    "`whichacid inspect` whether the columns were read rightly."),
+                        "", error);
+    }
     if (!result->runs.runs[0].conditions.titrant_concentration.known) {
         return add_next(result,
                         wa_sentence("Note the titrant concentration (`# titrant concentration: "

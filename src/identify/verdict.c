@@ -79,9 +79,7 @@ static size_t points_about(const struct wa_experiment *experiment, double volume
     return count;
 }
 
-/* Whether the readings go the other way than the titrant named can take them. */
-static bool runs_against_titrant(const struct wa_curve *curve,
-                                 const struct wa_experiment *experiment)
+bool wa_runs_against_titrant(const struct wa_curve *curve, const struct wa_experiment *experiment)
 {
     const double rise = experiment->reading[experiment->count - 1] - experiment->reading[0];
     return !curve->in_mV && (experiment->titrant_is_base ? rise < -1.0 : rise > 1.0);
@@ -107,7 +105,7 @@ static void unfit_reasons(const struct wa_identification *work, const struct wa_
     const struct wa_volume_estimate end =
         wa_equivalence_by_fit(experiment, fit, best->shown > 0 ? best->shown : 1);
     const double u = end.u_mL / end.volume_mL;
-    if (fit->noise_reading > usable_noise && runs_against_titrant(curve, experiment)) {
+    if (fit->noise_reading > usable_noise && wa_runs_against_titrant(curve, experiment)) {
         wa_text_append(reasons,
                        "the pH %s although the titrant is taken for %s; check the note "
                        "'titrant' and the columns",
