@@ -61,11 +61,13 @@ static int print_fit(const struct fit_case *c, const struct wa_experiment *exper
     }
     made = made && case_precisions(experiment, sample, fit->parameters, value, (int)count, &noise,
                                    true, work, NULL, precision);
-    json_t *root = json_pack("{s:s, s:b, s:i, s:i, s:i, s:f, s:f, s:f, s:f}", "case", c->name,
-                             "converged", fit->converged, "charge", c->charge, "steps", c->steps,
-                             "lost", c->lost, "temperature_C", experiment->temperature_C,
-                             "titrant_charge", experiment->titrant_charge, "solution_volume_L",
-                             exp(experiment->ln_volume.mean), "background", experiment->background);
+    json_t *root =
+        json_pack("{s:s, s:b, s:i, s:i, s:i, s:f, s:f, s:f, s:f, s:f, s:f, s:f}", "case", c->name,
+                  "converged", fit->converged, "charge", c->charge, "steps", c->steps, "lost",
+                  c->lost, "temperature_C", experiment->temperature_C, "titrant_charge",
+                  experiment->titrant_charge, "solution_volume_L", exp(experiment->ln_volume.mean),
+                  "background", experiment->background, "noise_reading", fit->noise_reading,
+                  "noise_volume", fit->noise_volume, "log_evidence", fit->log_evidence);
     if (made) {
         json_object_set_new(root, "volume_mL", numbers(experiment->volume_mL, experiment->count));
         json_object_set_new(root, "reading", numbers(experiment->reading, experiment->count));
