@@ -70,15 +70,17 @@ static void print_statistics(FILE *stream, const struct wa_table *table,
                              const struct wa_table_statistics *s)
 {
     double share = s->acids > 0 ? 100.0 * (double)s->acids_sourced / (double)s->acids : 0.0;
-    fprintf(stream, "%zu acids, %zu of them modelled, %zu (%.0f %%) with a source for every step, ",
+    fprintf(stream,
+            "%zu acids, %zu of them modelled, %zu (%.0f %%) with a source for\n"
+            "  every step, ",
             s->acids, s->acids_modelled, s->acids_sourced, share);
     fprintf(stream, "%zu with an enthalpy\n", s->acids_enthalpy);
     fprintf(stream, "%zu constants, %zu from a source, %zu from memory; %zu sources\n",
             s->constants, s->constants_sourced, s->constants - s->constants_sourced,
             table->source_count);
     fprintf(stream,
-            "%zu forms, %zu of several parts; %zu with a CAS number, %zu with hazards, %zu with a "
-            "solubility, %zu with a melting point\n",
+            "%zu forms, %zu of several parts; %zu with a CAS number, %zu with hazards,\n"
+            "  %zu with a solubility, %zu with a melting point\n",
             s->forms, s->forms_of_several_parts, s->forms_with_cas, s->forms_with_hazards,
             s->forms_with_solubility, s->forms_with_melting_point);
     fprintf(stream, "%zu indicators, %zu titrants, %zu standards, %zu buffer values\n",
