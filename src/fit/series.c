@@ -104,29 +104,102 @@ static bool correlate(const struct joining *joining, double *precision, double *
     return gsl_linalg_cholesky_invert(&view.matrix) == 0;
 }
 
-/* Take what the next run has added into the fit of the series, in terms of the first run. */
-static void absorb(const struct joining *joining, const struct wa_fit *next, struct wa_fit *fit)
+/* Old covariance of the shared parameters, factored, and what the next run has made of them. */
+struct update {
+    int shared[WA_PARAMETERS_MAX]; /* indices in the fit */
+    int index[WA_PARAMETERS_MAX];  /* the same parameters in the next run */
+    int count;
+    double factor[WA_PARAMETERS_MAX * WA_PARAMETERS_MAX];
+    double moved[WA_PARAMETERS_MAX]; /* new value less old */
+};
+
+static bool prepare_update(const struct joining *joining, const struct wa_fit *next,
+                           const struct wa_fit *fit, struct update *update)
 {
-    const int width = fit->parameter_count;
+    update->count = 0;
     for (int i = 0; i < joining->count; i++) {
-        const int a = joining->from[i];
-        if (a < 0) {
-            continue;
-        }
-        fit->parameters[a].value =
-            next->parameters[i].value - amount_shift(joining, &next->parameters[i]);
-        fit->parameters[a].u = next->parameters[i].u;
-        /* Correlations with what is the first run's own are no longer known, and left out. */
-        for (int b = 0; b < width; b++) {
-            fit->covariance[a * width + b] = fit->covariance[b * width + a] = 0.0;
+        if (joining->from[i] >= 0) {
+            const int a = joining->from[i];
+            update->moved[update->count] = next->parameters[i].value -
+                                           amount_shift(joining, &next->parameters[i]) -
+                                           fit->parameters[a].value;
+            update->index[update->count] = i;
+            update->shared[update->count++] = a;
         }
     }
-    for (int i = 0; i < joining->count; i++) {
-        for (int j = 0; j < joining->count; j++) {
-            if (joining->from[i] >= 0 && joining->from[j] >= 0) {
-                fit->covariance[joining->from[i] * width + joining->from[j]] =
-                    next->covariance[i * joining->count + j];
-            }
+    for (int i = 0; i < update->count; i++) {
+        for (int j = 0; j < update->count; j++) {
+            update->factor[i * update->count + j] =
+                fit->covariance[update->shared[i] * fit->parameter_count + update->shared[j]];
+        }
+    }
+    const size_t size = (size_t)update->count;
+    gsl_matrix_view factor = gsl_matrix_view_array(update->factor, size, size);
+    return gsl_linalg_cholesky_decomp1(&factor.matrix) == 0;
+}
+
+/* Regression of one of the first run's own parameters on the shared ones. */
+static void regress(struct update *update, const struct wa_fit *fit, int own, double *weight)
+{
+    const size_t size = (size_t)update->count;
+    gsl_matrix_view factor = gsl_matrix_view_array(update->factor, size, size);
+    gsl_vector_view solution = gsl_vector_view_array(weight, size);
+    for (int i = 0; i < update->count; i++) {
+        weight[i] = fit->covariance[own * fit->parameter_count + update->shared[i]];
+    }
+    gsl_linalg_cholesky_svx(&factor.matrix, &solution.vector);
+}
+
+/* Move one of the first run's own parameters as its regression on the shared ones tells; its
+ * covariances with them, and its variance, follow. Two such parameters keep what they shared beside
+ * that. */
+static void move_own(const struct update *update, const struct wa_fit *next, const double *weight,
+                     int own, struct wa_fit *fit)
+{
+    const int width = fit->parameter_count;
+    double variance = fit->covariance[own * width + own];
+    for (int i = 0; i < update->count; i++) {
+        double cross = 0.0;
+        for (int j = 0; j < update->count; j++) {
+            cross += weight[j] *
+                     next->covariance[update->index[j] * next->parameter_count + update->index[i]];
+        }
+        const double before = fit->covariance[own * width + update->shared[i]];
+        variance += weight[i] * (cross - before);
+        fit->covariance[own * width + update->shared[i]] = cross;
+        fit->covariance[update->shared[i] * width + own] = cross;
+        fit->parameters[own].value += weight[i] * update->moved[i];
+    }
+    fit->covariance[own * width + own] = fmax(variance, 0.0);
+    fit->parameters[own].u = sqrt(fmax(variance, 0.0));
+}
+
+/* Take what the next run has added into the fit of the series, in terms of the first run. */
+static bool absorb(const struct joining *joining, const struct wa_fit *next, struct wa_fit *fit)
+{
+    const int width = fit->parameter_count;
+    struct update update;
+    double weight[WA_PARAMETERS_MAX];
+    if (!prepare_update(joining, next, fit, &update)) {
+        return false;
+    }
+    for (int own = 0; own < width; own++) {
+        bool shared = false;
+        for (int i = 0; i < update.count; i++) {
+            shared = shared || update.shared[i] == own;
+        }
+        if (!shared) {
+            regress(&update, fit, own, weight);
+            move_own(&update, next, weight, own, fit);
+        }
+    }
+    for (int i = 0; i < update.count; i++) {
+        struct wa_parameter *parameter = &fit->parameters[update.shared[i]];
+        parameter->value += update.moved[i];
+        parameter->u = next->parameters[update.index[i]].u;
+        for (int j = 0; j < update.count; j++) {
+            fit->covariance[update.shared[i] * width + update.shared[j]] =
+                next->covariance[update.index[i] * next->parameter_count + update.index[j]];
         }
     }
     if (fit->run_count < WA_SERIES_MAX) {
@@ -134,6 +207,7 @@ static void absorb(const struct joining *joining, const struct wa_fit *next, str
     }
     fit->log_evidence += next->log_evidence;
     fit->log_likelihood += next->log_likelihood;
+    return true;
 }
 
 static enum wa_status fit_next(const struct wa_experiment *first,
@@ -157,11 +231,7 @@ static enum wa_status fit_next(const struct wa_experiment *first,
         status = wa_fit_single(experiment, &free_sites, NULL, NULL, &prior, &next, error);
     }
     free(precision);
-    if (status == WA_OK && next.converged) {
-        absorb(&joining, &next, fit);
-    } else {
-        fit->converged = false;
-    }
+    fit->converged = status == WA_OK && next.converged && absorb(&joining, &next, fit);
     wa_fit_free(&next);
     return status;
 }
