@@ -207,6 +207,23 @@ static char *keys_of(const struct wa_identification *work, size_t count)
     return text.bytes != NULL ? text.bytes : wa_text_copy("", 0);
 }
 
+/* The share of the mass weighed that the best candidate would be, NaN without a mass. */
+static double share_of_mass(const struct wa_identification *work)
+{
+    const struct wa_candidate *first = &work->match.candidates[0];
+    return work->mass.known ? work->table->forms[first->form].molar_mass * exp(first->ln_amount) /
+                                  work->mass.mass_g
+                            : NAN;
+}
+
+/* A curve may be that of one substance and no other, and the mass still contradict it: that is no
+ * identification. */
+static bool mass_contradicts(const struct wa_identification *work)
+{
+    const double share = share_of_mass(work);
+    return share < share_least || share > share_most;
+}
+
 static char *identified_sentence(const struct wa_identification *work)
 {
     struct wa_text text = {.bytes = NULL};
@@ -215,17 +232,28 @@ static char *identified_sentence(const struct wa_identification *work)
     append_name(work, first, &text);
     wa_text_append(&text, ", with a probability of %.1f %% among the substances considered.",
                    fmin(100.0 * first->probability, 99.9));
-    if (work->mass.known) {
-        const double measured = work->mass.mass_g / exp(first->ln_amount);
-        const double share = work->table->forms[first->form].molar_mass / measured;
-        if (share < share_least || share > share_most) {
-            wa_text_append(&text,
-                           " The mass contradicts it, though: the amount titrated would be %.0f %% "
-                           "of the mass weighed. Check the mass, the aliquot and the titrant.",
-                           100.0 * share);
-        }
+    if (text.failed) {
+        wa_text_free(&text);
+        return NULL;
     }
-    return text.failed ? NULL : text.bytes;
+    return text.bytes;
+}
+
+static char *contradicted_sentence(const struct wa_identification *work)
+{
+    struct wa_text text = {.bytes = NULL};
+    wa_text_append(&text, "The curve is like that of ");
+    append_name(work, &work->match.candidates[0], &text);
+    wa_text_append(
+        &text,
+        ", but the mass contradicts it: the amount titrated would be %.0f %% of the mass "
+        "weighed. Check the mass, the aliquot and the titrant.",
+        100.0 * share_of_mass(work));
+    if (text.failed) {
+        wa_text_free(&text);
+        return NULL;
+    }
+    return text.bytes;
 }
 
 static char *narrowed_sentence(const struct wa_identification *work, size_t count, double share,
@@ -301,6 +329,12 @@ enum wa_status wa_fill_verdict(const struct wa_identification *work, struct wa_r
         verdict->probability = match->not_in_table;
         verdict->sentence = not_in_table_sentence(work, work->threshold);
         verdict->forms = wa_text_copy("", 0);
+    } else if (mass_contradicts(work)) {
+        verdict->kind = WA_VERDICT_NARROWED;
+        verdict->probability = share;
+        verdict->form_count = count;
+        verdict->forms = keys_of(work, count);
+        verdict->sentence = contradicted_sentence(work);
     } else if (match->candidates[0].probability >= work->threshold) {
         verdict->kind = WA_VERDICT_IDENTIFIED;
         verdict->probability = match->candidates[0].probability;
