@@ -19,10 +19,10 @@
 #define WA_STRAY_ELECTRODE_SHARE 0.15
 #define WA_STRAY_ELECTRODE_U 0.2
 
-/** Half of "not in the table" resembles what is listed: constants about those of a listed acid
- * within this u, and a molar mass that is the same (an isomer) in this share, else within this u of
- * its ln. */
-#define WA_RELATIVE_SHARE 0.5
+/** This share of "not in the table" resembles what is listed: constants about those of a listed
+ * acid within this u, and a molar mass that is the same (an isomer) in this share, else within this
+ * u of its ln. */
+#define WA_RELATIVE_SHARE 0.7
 #define WA_RELATIVE_PK_U 0.35
 #define WA_RELATIVE_ISOMER_SHARE 0.3
 #define WA_RELATIVE_LN_MASS_U 0.25

@@ -55,16 +55,16 @@ static enum wa_status assume_priors(const struct wa_identification *work, struct
         wa_sentence(
             "Before the data, \"not in the table\" has a weight of %.0f %%; the rest is %s%s. "
             "An acid that is not in the table has 1 to 6 protons, constants about %.1f "
-            "\u00b1 %.1f and a molar mass anywhere between %.0f and %.0f g/mol, or (half of the "
-            "weight) resembles a listed one. One row of "
-            "the table in %.0f is taken to be wrong by more than it admits.",
+            "\u00b1 %.1f and a molar mass anywhere between %.0f and %.0f g/mol, or (%.0f %% of "
+            "that weight) resembles a listed one. One row of the table in %.0f is taken to be "
+            "wrong by more than it admits.",
             100.0 * work->match.not_in_table_prior,
             told ? "shared as told by "
                  : "shared evenly over the acid systems considered, "
                    "then over the forms of each, enantiomers as one",
             told && work->options->prior_file != NULL ? work->options->prior_file : "",
             WA_GENERIC_PK_MEAN, WA_GENERIC_PK_U, WA_MOLAR_MASS_LOW, WA_MOLAR_MASS_HIGH,
-            1.0 / WA_ROW_WRONG_SHARE),
+            100.0 * WA_RELATIVE_SHARE, 1.0 / WA_ROW_WRONG_SHARE),
         error);
     if (status == WA_OK && work->mass.known) {
         status = add_assumption(
